@@ -339,6 +339,11 @@ CONTEXT = Table(
         ),
         _number("filter_reading_age_h", "Age of the last reading", "h", 0, 1e5),
         _yes_no("filter_reading_has_flow", "Last reading has its flow"),
+        _yes_no(
+            "filter_reading_in_window",
+            "Reading in the window before the start",
+            "No where the filter is known and was not read; unknown without a filter",
+        ),
         _word(
             "filter_trend",
             "Filter",
@@ -359,6 +364,11 @@ CONTEXT = Table(
         ),
         _yes_no("volume_drifting", "Exhaled / inspired volume drifting"),
         _number("hours_to_fault_h", "Until the next flow-sensor fault", "h", 0, 1e6),
+        _yes_no(
+            "fault_soon_after",
+            "Fault soon after",
+            "No only where the ventilator has later records that show none",
+        ),
         _number("clock_offset_s", "Clock offset", "s", -172800, 172800),
         _number("room_volume_m3", "Room volume", "m3", 5, 2000),
         _number("room_air_changes_per_h", "Air changes", "/h", 0, 100),
