@@ -327,6 +327,7 @@ CONTEXT = Table(
         _token("local_month", "Month", "Local calendar month of the start"),
         _word("shift", "Shift", "day evening night"),
         _number("duration_min", "Run time", "min", -1e6, 1e6),
+        _token("filter_in_use_id", "Filter in use"),
         _word("filter_kind", "Filter kind", "pleated electrostatic hmef"),
         _number("filter_age_h", "Filter in use for", "h", 0, 1e5),
         _number(

@@ -1,0 +1,3 @@
+"""The version every report names."""
+
+VERSION = "0.1.0"
