@@ -1,0 +1,245 @@
+"""The command ``aerosol-review``: what can be done without a screen.
+
+Exit 0 done · 2 bad input, one clear line on stderr · 1 a fault of ours.
+"""
+
+from __future__ import annotations
+
+import argparse
+import os
+import subprocess
+import sys
+from collections.abc import Callable, Sequence
+from datetime import UTC, datetime
+from pathlib import Path
+
+from engine.errors import EngineError
+
+DONE, FAULT, BAD_INPUT = 0, 1, 2
+
+ABOUT = (
+    "Reviews logged aerosol treatments of ventilated patients: setups, filters, "
+    "sensors. Findings need clinical confirmation; local policy and licensed "
+    "practice decide."
+)
+
+
+def main(arguments: Sequence[str] | None = None) -> int:
+    """Runs one command; returns the exit code."""
+    chosen = _parser().parse_args(arguments)
+    try:
+        return chosen.run(chosen) or DONE
+    except EngineError as problem:
+        print(f"aerosol-review: {problem}", file=sys.stderr)
+        return BAD_INPUT
+    except KeyboardInterrupt:
+        print("aerosol-review: stopped; nothing half-written is kept", file=sys.stderr)
+        return BAD_INPUT
+    except BrokenPipeError:
+        return DONE
+    except Exception as fault:
+        if os.environ.get("AEROSOL_REVIEW_TRACE"):
+            raise
+        print(
+            f"aerosol-review: a fault of ours ({type(fault).__name__}: {fault}); "
+            "set AEROSOL_REVIEW_TRACE=1 to see where",
+            file=sys.stderr,
+        )
+        return FAULT
+
+
+def _parser() -> argparse.ArgumentParser:
+    parser = argparse.ArgumentParser(prog="aerosol-review", description=ABOUT)
+    parser.set_defaults(run=_open_demo)
+    commands = parser.add_subparsers(title="commands", metavar="")
+
+    add = _adder(commands)
+    one = add("open", _open, "open the app on a log")
+    one.add_argument("log", type=Path, metavar="LOG")
+
+    one = add("demo", _demo, "write the invented department")
+    one.add_argument("log", type=Path, metavar="LOG")
+    one.add_argument("--months", type=_positive, default=6)
+    one.add_argument("--treatments-per-month", type=_positive, default=800)
+    one.add_argument("--seed", type=int, default=1)
+
+    one = add("intake", _intake, "raw exports -> log, with a load report")
+    one.add_argument("source", type=Path, nargs="+", metavar="SOURCE")
+    one.add_argument("--map", type=Path, metavar="MAP", help="how to read the exports")
+    one.add_argument("--into", type=Path, required=True, metavar="LOG")
+    one.add_argument("--site-zone", default="UTC", metavar="ZONE")
+
+    one = add("replay", _replay, "balance, answers, findings and run.json")
+    one.add_argument("log", type=Path, metavar="LOG")
+    one.add_argument("--out", type=Path, required=True, metavar="DIR")
+    _judged(one)
+
+    one = add("report", _report, "a printable report")
+    one.add_argument(
+        "kind", choices=("month", "topics", "incident", "filters", "scenario")
+    )
+    one.add_argument("log", type=Path, metavar="LOG")
+    one.add_argument("--out", type=Path, required=True, metavar="FILE.html|.pdf|.xlsx")
+    one.add_argument("--month", metavar="YYYY-MM", help="default: the last whole month")
+    one.add_argument("--incident", metavar="ID")
+    one.add_argument("--journal", type=Path, metavar="FILE")
+    _judged(one)
+
+    one = add("verify", _verify, "published values against the engine, a line each")
+    one.add_argument("--all", action="store_true", help="also the lines that agree")
+
+    one = add("journal", _journal, "recompute the hash chain of a journal")
+    one.add_argument("check", choices=("check",))
+    one.add_argument("file", type=Path, metavar="FILE")
+    return parser
+
+
+def _adder(commands: argparse._SubParsersAction) -> Callable:
+    def add(name: str, run: Callable, help: str) -> argparse.ArgumentParser:
+        one = commands.add_parser(name, help=help, description=help)
+        one.set_defaults(run=run)
+        return one
+
+    return add
+
+
+def _judged(one: argparse.ArgumentParser) -> None:
+    one.add_argument("--policy", default="common_practice", metavar="POLICY")
+    one.add_argument("--scenario", metavar="SCENARIO", help="a name or a TOML file")
+
+
+def _positive(text: str) -> int:
+    value = int(text)
+    if value < 1:
+        raise argparse.ArgumentTypeError(f"must be at least 1; got {value}")
+    return value
+
+
+def _open_demo(chosen: argparse.Namespace) -> int:
+    return _serve(None)
+
+
+def _open(chosen: argparse.Namespace) -> int:
+    from engine import open_log
+
+    open_log(chosen.log).close()
+    return _serve(chosen.log)
+
+
+def _serve(log: Path | None) -> int:
+    from reviewapp.serve import streamlit_command, streamlit_environment
+
+    environment = streamlit_environment(log)
+    return subprocess.run(streamlit_command(), env=environment, check=False).returncode
+
+
+def _demo(chosen: argparse.Namespace) -> None:
+    from engine.simulate import write_department
+
+    write_department(
+        chosen.log,
+        months=chosen.months,
+        treatments_per_month=chosen.treatments_per_month,
+        seed=chosen.seed,
+    )
+    _say(f"wrote {chosen.log}: an invented department, nothing in it is real")
+
+
+def _intake(chosen: argparse.Namespace) -> int:
+    from engine.intake import take_in
+
+    report = take_in(
+        chosen.source,
+        chosen.into,
+        site_zone=chosen.site_zone,
+        created_at=datetime.now(UTC).replace(tzinfo=None),
+        mapping=chosen.map,
+    )
+    print(report.text())
+    return DONE
+
+
+def _replay(chosen: argparse.Namespace) -> None:
+    from engine import load_policy, open_log
+    from engine.replay import replay_to
+
+    log = open_log(chosen.log)
+    stamp = replay_to(
+        log,
+        load_policy(chosen.policy),
+        chosen.out,
+        scenario=_scenario(chosen.scenario),
+        progress=_progress(),
+    )
+    log.close()
+    _say(
+        f"{stamp['treatments']:,} treatments replayed; rows in {stamp['rows_in']:,} = "
+        f"used {stamp['rows_used']:,} + refused {stamp['rows_refused']:,}"
+    )
+
+
+def _report(chosen: argparse.Namespace) -> None:
+    from reviewapp.reports import write_report
+
+    write_report(
+        chosen.kind,
+        chosen.log,
+        chosen.out,
+        policy=chosen.policy,
+        scenario=_scenario(chosen.scenario),
+        month=chosen.month,
+        incident_id=chosen.incident,
+        journal=chosen.journal,
+        made_at=datetime.now(UTC).replace(tzinfo=None),
+        progress=_progress(),
+    )
+    _say(f"wrote {chosen.out}")
+
+
+def _verify(chosen: argparse.Namespace) -> int:
+    from engine.verify import verify_lines
+
+    lines = list(verify_lines())
+    wrong = [line for line in lines if not line.agrees]
+    for line in lines:
+        if chosen.all or not line.agrees or sys.stdout.isatty() or True:
+            print(line.text())
+    print(f"{len(lines) - len(wrong)} of {len(lines)} published values agree")
+    return FAULT if wrong else DONE
+
+
+def _journal(chosen: argparse.Namespace) -> None:
+    from engine.journal import open_journal
+
+    journal = open_journal(chosen.file)
+    journal.check()
+    count = len(list(journal.entries()))
+    print(f"{chosen.file}: {count} entries, the chain holds; head {journal.head}")
+
+
+def _scenario(name_or_path: str | None):
+    if name_or_path is None:
+        return None
+    from engine.replay import find_scenario
+
+    return find_scenario(name_or_path)
+
+
+def _progress() -> Callable[[float, str], None] | None:
+    """A moving line on a terminal, silence in a pipe."""
+    if not sys.stderr.isatty():
+        return None
+
+    def show(share: float, what: str) -> None:
+        end = "\n" if share >= 1 else ""
+        print(f"\r{share:4.0%}  {what:<50}", end=end, file=sys.stderr, flush=True)
+
+    return show
+
+
+def _say(line: str) -> None:
+    print(line)
+
+
+if __name__ == "__main__":
+    sys.exit(main())
