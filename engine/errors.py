@@ -8,6 +8,7 @@ EngineError
   UnknownId          no treatment, filter or incident of that id
   NothingToReview    the period holds no treatments
   JournalBroken      the hash chain of the journal does not hold
+  EntryRefused       an entry says something the journal cannot keep
 """
 
 
@@ -41,3 +42,7 @@ class NothingToReview(EngineError):
 
 class JournalBroken(EngineError):
     """A journal entry was altered, removed or reordered."""
+
+
+class EntryRefused(EngineError):
+    """A journal entry is not written: unknown action or verdict, no actor, too long."""
