@@ -49,3 +49,6 @@ class Number:
         if isinstance(self.value, tuple):
             raise TypeError("a set of coefficients is not one number")
         return float(self.value)
+
+    def __int__(self) -> int:
+        return int(float(self))

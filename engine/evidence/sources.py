@@ -16,3 +16,64 @@ OURS = Source(
     title="A choice made for this project; change it in the policy or say why not",
     known="ours",
 )
+
+BAI_1997 = Source(
+    key="BAI_1997",
+    authors="Bai J",
+    year=1997,
+    title="Estimation of a change point in multiple regression models",
+    journal="Review of Economics and Statistics 79:551",
+    known="from memory",
+)
+FIELLER_1954 = Source(
+    key="FIELLER_1954",
+    authors="Fieller EC",
+    year=1954,
+    title="Some problems in interval estimation",
+    journal="Journal of the Royal Statistical Society B 16:175",
+    known="from memory",
+)
+FREEDMAN_1983 = Source(
+    key="FREEDMAN_1983",
+    authors="Freedman D, Lane D",
+    year=1983,
+    title="A nonstochastic interpretation of reported significance levels",
+    journal="Journal of Business and Economic Statistics 1:292",
+    known="from memory",
+)
+GILBERT_1987 = Source(
+    key="GILBERT_1987",
+    authors="Gilbert RO",
+    year=1987,
+    title="Statistical Methods for Environmental Pollution Monitoring",
+    known="from memory",
+)
+GREENWELL_2014 = Source(
+    key="GREENWELL_2014",
+    authors="Greenwell BM, Schubert Kabban CM",
+    year=2014,
+    title="investr: an R package for inverse estimation",
+    journal="The R Journal 6(1):90",
+)
+JIANG_2022 = Source(
+    key="JIANG_2022",
+    authors="Jiang Z, Liang H, Peng G and others",
+    year=2022,
+    title="Resistance of breathing-circuit filters after nebulised drugs",
+    journal="Annals of Translational Medicine 10(4):189",
+    address="doi.org/10.21037/atm-22-84",
+)
+PETTITT_1979 = Source(
+    key="PETTITT_1979",
+    authors="Pettitt AN",
+    year=1979,
+    title="A non-parametric approach to the change-point problem",
+    journal="Applied Statistics 28:126",
+)
+SEN_1968 = Source(
+    key="SEN_1968",
+    authors="Sen PK",
+    year=1968,
+    title="Estimates of the regression coefficient based on Kendall's tau",
+    journal="Journal of the American Statistical Association 63:1379",
+)
