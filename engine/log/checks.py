@@ -3,6 +3,9 @@
 A row that fails is never dropped: it becomes a row of ``refused`` with a code, the
 value and a message of the form "what must hold; got what (where)". A row with several
 faults is filed under the first, and its message names them all.
+
+The SQL speaks of two columns made by ``staged`` for each column of the table:
+``held_<name>``, what stands in the file, and ``read_<name>``, its value.
 """
 
 from __future__ import annotations
@@ -23,8 +26,9 @@ ORDERED: dict[str, tuple[tuple[str, str], ...]] = {
 # Outside these years a time is a slip or a reset clock, and calendars cannot hold it.
 FIRST_YEAR, LAST_YEAR = 1900, 2199
 
-# The longest stretch of a foreign value that a message repeats.
+# The longest stretch of a foreign value that a message, and a refused row, repeat.
 SHOWN_CHARACTERS = 80
+KEPT_CHARACTERS = 200
 
 MUST: dict[str, str] = {
     "missing": "{column} must be given; got nothing",
@@ -53,6 +57,23 @@ class Fault:
     must: str
 
 
+def staged(table: Table, stored: Mapping[str, str], source: str) -> str:
+    """SQL for each row's number, what stands in every column, and its value.
+
+    ``source`` is the FROM clause. Two nested steps, so that each value is read once
+    however many checks ask for it.
+    """
+    held, values = [], []
+    for column in table.columns:
+        kind = stored[column.name]
+        held.append(f"{reading.held(column, kind)} AS {_held(column)}")
+        values.append(
+            f"{reading.value(column, kind, _held(column))} AS {_read(column)}"
+        )
+    inner = f"SELECT rowid AS number, {', '.join(held)} FROM {source}"
+    return f"SELECT *, {', '.join(values)} FROM ({inner})"
+
+
 def faults(table: Table, stored: Mapping[str, str]) -> list[Fault]:
     """Every check of a table, in column order; duplicates are found separately.
 
@@ -62,17 +83,55 @@ def faults(table: Table, stored: Mapping[str, str]) -> list[Fault]:
     for column in table.columns:
         found += _column_faults(column, stored[column.name])
     for before, after in ORDERED.get(table.name, ()):
-        found.append(_order_fault(table, stored, before, after))
+        found.append(_order_fault(table.column(before), table.column(after)))
     return found
 
 
-def place(table: Table, stored: Mapping[str, str]) -> str:
+def never(table: Table) -> list[str]:
+    """Conditions no row meets, over the columns that no check asks for.
+
+    They make the one pass read every column, so that a damaged block is found when
+    the log is opened and not on some later screen.
+    """
+    return [
+        f"len({_held(column)}::VARCHAR) < 0"
+        for column in table.columns
+        if column.kind in {"id", "token", "text"}
+    ] or ["false"]
+
+
+def duplicate_fault(table: Table) -> Fault:
+    """The wording of a repeated id, or of a repeated row where there is no id."""
+    if table.key is None:
+        return Fault("", "duplicate", "true", "NULL", MUST["duplicate_row"])
+    must = MUST["duplicate"].replace("{column}", table.key)
+    key = _shown_value(table.column(table.key))
+    return Fault(table.key, "duplicate", "true", key, must)
+
+
+def same_row(table: Table) -> list[str]:
+    """The columns that no two rows may share: the id, or else all of them."""
+    columns = table.columns if table.key is None else (table.column(table.key),)
+    return [_read(column) for column in columns]
+
+
+def place(table: Table) -> str:
     """SQL for the words that say which row: "treatment 1042", or "treatment row 7"."""
-    by_row = f"{literal(_noun(table) + ' row ')} || (rowid + 1)"
+    noun = table.key.rsplit("_", 1)[0] if table.key else table.label.lower()
+    by_row = f"{literal(noun + ' row ')} || (number + 1)"
     if table.key is None:
         return f"({by_row})"
-    key = reading.as_text(table.column(table.key), stored[table.key])
-    return f"coalesce({literal(_noun(table) + ' ')} || {shown(key)}, {by_row})"
+    key = shown(_read(table.column(table.key)))
+    return f"coalesce({literal(noun + ' ')} || {key}, {by_row})"
+
+
+def message(fault: Fault) -> str:
+    """SQL for the sentence of a fault, still without its place."""
+    before, hole, after = fault.must.partition("{value}")
+    if not hole:
+        return literal(before)
+    got = f"coalesce({shown(fault.value)}, 'nothing')"
+    return f"({literal(before)} || {got} || {literal(after)})"
 
 
 def shown(value: str) -> str:
@@ -82,69 +141,49 @@ def shown(value: str) -> str:
     return f"CASE WHEN len({plain}) > {SHOWN_CHARACTERS} THEN {short} ELSE {plain} END"
 
 
-def message(fault: Fault, where: str) -> str:
-    """SQL for the whole sentence of a fault at the place ``where``."""
-    before, _, after = fault.must.partition("{value}")
-    got = f"coalesce({shown(fault.value)}, 'nothing')"
-    middle = f" || {got} || {literal(after)}" if "{value}" in fault.must else ""
-    return f"({literal(before)}{middle} || ' (' || {where} || ')')"
-
-
-def duplicate_fault(table: Table, stored: Mapping[str, str]) -> Fault:
-    """The wording of a repeated id, or of a repeated row where there is no id."""
-    if table.key is None:
-        return Fault("", "duplicate", "true", "NULL", MUST["duplicate_row"])
-    key = reading.as_text(table.column(table.key), stored[table.key])
-    must = MUST["duplicate"].replace("{column}", table.key)
-    return Fault(table.key, "duplicate", "true", key, must)
-
-
 def _column_faults(column: Column, stored: str) -> list[Fault]:
-    text, value = reading.as_text(column, stored), reading.as_value(column, stored)
+    held, value = _held(column), _read(column)
     found = []
     if column.required:
-        found.append(_fault(column, "missing", "missing", f"{text} IS NULL", text))
+        found.append(_fault(column, "missing", "missing", f"{held} IS NULL"))
+    unread = f"{held} IS NOT NULL AND {value} IS NULL"
     if column.kind == "word":
         if not reading.exact_words(column, stored):
-            wrong = f"{text} IS NOT NULL AND lower({text}) NOT IN ({_listed(column)})"
-            found.append(_fault(column, "unknown_word", "unknown_word", wrong, text))
-        return found
-    if column.kind in {"number", "count", "time", "yes_no"}:
-        wrong = f"{text} IS NOT NULL AND {value} IS NULL"
+            said = f"lower({held}) <> 'unknown'"
+            wrong = f"{unread} AND {said}"
+            found.append(_fault(column, "unknown_word", "unknown_word", wrong))
+    elif column.kind in {"number", "count", "time", "yes_no"}:
         must = f"unreadable_{column.kind}"
-        found.append(_fault(column, "unreadable", must, wrong, _plain(column, text)))
-    return found + _range_faults(column, text, value)
+        found.append(_fault(column, "unreadable", must, unread))
+    return found + _range_faults(column, value)
 
 
-def _range_faults(column: Column, text: str, value: str) -> list[Fault]:
+def _range_faults(column: Column, value: str) -> list[Fault]:
     if column.kind == "time":
         outside = f"year({value}) NOT BETWEEN {FIRST_YEAR} AND {LAST_YEAR}"
-        return [_fault(column, "out_of_range", "out_of_range_time", outside, text)]
+        return [_fault(column, "out_of_range", "out_of_range_time", outside)]
     if column.low is None or column.high is None:
         return []
-    below, above = (
-        f"{value} < {figure(column.low)}",
-        f"{value} > {figure(column.high)}",
-    )
-    got = _plain(column, text)
+    below = f"{value} < {figure(column.low)}"
+    above = f"{value} > {figure(column.high)}"
     return [
-        _fault(column, "out_of_range", "out_of_range_low", below, got),
-        _fault(column, "out_of_range", "out_of_range_high", above, got),
+        _fault(column, "out_of_range", "out_of_range_low", below),
+        _fault(column, "out_of_range", "out_of_range_high", above),
     ]
 
 
-def _order_fault(
-    table: Table, stored: Mapping[str, str], before: str, after: str
-) -> Fault:
-    first, last = table.column(before), table.column(after)
-    start = reading.as_value(first, stored[before])
-    end = reading.as_value(last, stored[after])
-    text = reading.as_text(last, stored[after])
-    must = MUST["wrong_order"].replace("{column}", after).replace("{other}", before)
-    return Fault(after, "wrong_order", f"{end} < {start}", text, must)
+def _order_fault(before: Column, after: Column) -> Fault:
+    must = MUST["wrong_order"].replace("{column}", after.name)
+    return Fault(
+        after.name,
+        "wrong_order",
+        f"{_read(after)} < {_read(before)}",
+        _shown_value(after),
+        must.replace("{other}", before.name),
+    )
 
 
-def _fault(column: Column, code: str, must: str, when: str, value: str) -> Fault:
+def _fault(column: Column, code: str, must: str, when: str) -> Fault:
     low, high = column.low, column.high
     if column.kind == "time":
         low, high = FIRST_YEAR, LAST_YEAR
@@ -155,21 +194,20 @@ def _fault(column: Column, code: str, must: str, when: str, value: str) -> Fault
         .replace("{low}", "" if low is None else figure(low))
         .replace("{high}", "" if high is None else figure(high))
     )
-    return Fault(column.name, code, f"({when})", value, wording)
+    return Fault(column.name, code, f"({when})", _shown_value(column), wording)
 
 
-def _plain(column: Column, text: str) -> str:
+def _shown_value(column: Column) -> str:
+    text = f"{_held(column)}::VARCHAR"
     # A stored 2.0 is shown as 2, the way it was most likely entered.
     if column.kind in {"number", "count"}:
         return f"regexp_replace({text}, '\\.0$', '')"
     return text
 
 
-def _listed(column: Column) -> str:
-    return ", ".join(literal(word) for word in column.words)
+def _held(column: Column) -> str:
+    return quoted(f"held_{column.name}")
 
 
-def _noun(table: Table) -> str:
-    if table.key is None:
-        return table.label.lower()
-    return quoted(table.key)[1:-1].rsplit("_", 1)[0]
+def _read(column: Column) -> str:
+    return quoted(f"read_{column.name}")

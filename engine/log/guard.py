@@ -17,7 +17,7 @@ import duckdb
 from engine.columns import TABLES, Table
 from engine.errors import LogUnreadable
 from engine.log import reading
-from engine.log.schema import literal, wal_of
+from engine.log.schema import literal
 
 MEMORY_LIMIT = "2GB"
 THREADS = 2
@@ -73,13 +73,9 @@ def attached(path: Path) -> duckdb.DuckDBPyConnection:
             f"ATTACH {literal(str(path))} AS logged (READ_ONLY, TYPE duckdb)"
         )
         connection.execute("SET enable_external_access = false")
-        _refuse_if_cut_short(connection, path)
     except duckdb.Error as error:
         connection.close()
         raise LogUnreadable(opening_failed(path, error)) from None
-    except LogUnreadable:
-        connection.close()
-        raise
     return connection
 
 
@@ -168,17 +164,8 @@ def _refuse_programs(connection: duckdb.DuckDBPyConnection, path: Path) -> None:
         if row is not None:
             raise LogUnreadable(
                 f"{path}: {str(row[0])[:60]} is a {kind}; "
-                "a log holds base tables only, so the file is not opened"
+                "a log holds base tables only; not opened"
             )
-
-
-def _refuse_if_cut_short(connection: duckdb.DuckDBPyConnection, path: Path) -> None:
-    row = connection.execute(
-        "SELECT block_size * total_blocks FROM pragma_database_size() "
-        "WHERE database_name = 'logged'"
-    ).fetchone()
-    if row and path.stat().st_size < row[0]:
-        raise LogUnreadable(f"{path} is cut short; restore it from its source")
 
 
 _KINDS = {
@@ -191,12 +178,3 @@ _KINDS = {
     "yes_no": "yes or no",
     "time": "time",
 }
-
-__all__ = [
-    "attached",
-    "locked",
-    "opening_failed",
-    "refuse_unless_database",
-    "stored_types",
-    "wal_of",
-]

@@ -16,7 +16,14 @@ from zoneinfo import ZoneInfo
 import duckdb
 import pandas as pd
 
-from engine.columns import BAD_ROW, LOG_INFO, RECORD_TABLES, SCHEMA_VERSION, Table
+from engine.columns import (
+    BAD_ROW,
+    LOG_INFO,
+    RECORD_TABLES,
+    SCHEMA_VERSION,
+    Column,
+    Table,
+)
 from engine.errors import LogUnreadable
 from engine.log import checks, guard, reading
 from engine.log.schema import create_types, literal, quoted, sql_type, wal_of
@@ -57,9 +64,15 @@ class Log:
         return self._connection.cursor()
 
     def frame(self, sql: str, params: Any = None) -> pd.DataFrame:
-        """The rows an SQL question gives, as a DataFrame."""
-        with self.cursor() as cursor:
-            return cursor.execute(sql, params).df()
+        """The rows an SQL question gives, as a DataFrame.
+
+        Raises   LogUnreadable if the file can no longer be read.
+        """
+        try:
+            with self.cursor() as cursor:
+                return cursor.execute(sql, params).df()
+        except duckdb.IOException as error:
+            raise LogUnreadable(guard.opening_failed(self.path, error)) from None
 
     def accounts(self) -> pd.DataFrame:
         """One row a table: rows_in = rows_used + rows_refused, always."""
@@ -186,53 +199,62 @@ def _find_refused(
     connection: duckdb.DuckDBPyConnection, table: Table, stored: Mapping[str, str]
 ) -> None:
     """Put the table's failing rows, then its repeated ids, into ``refusal``."""
-    where = checks.place(table, stored)
     found = checks.faults(table, stored)
-    cases = ", ".join(
-        f"CASE WHEN {fault.when} THEN {_as_struct(fault, where)} END" for fault in found
-    )
-    any_fault = " OR ".join(f"coalesce({fault.when}, false)" for fault in found)
+    flags = ", ".join([*checks.never(table), *(fault.when for fault in found)])
+    # An aggregate, not a filter: DuckDB would push a filter down through the staging
+    # and read every value again for every check that asks for it.
     connection.execute(
-        "INSERT INTO refusal "
-        f"SELECT {literal(table.name)}, number, f[1].c, f[1].d, f[1].v, "
-        "array_to_string(list_transform(f, lambda x: x.m), '; ') FROM ("
-        f"SELECT rowid AS number, list_filter([{cases}], lambda x: x IS NOT NULL) AS f "
-        f"FROM {_logged(table)} WHERE {any_fault})"
+        "CREATE TEMP TABLE suspect AS SELECT unnest(numbers) AS number FROM ("
+        f"SELECT list(number) FILTER (WHERE greatest({flags})) AS numbers "
+        f"FROM ({checks.staged(table, stored, _logged(table))}))"
     )
+    if _count(connection, "SELECT count(*) FROM suspect"):
+        suspects = f"{_logged(table)} WHERE rowid IN (SELECT number FROM suspect)"
+        cases = ", ".join(
+            f"CASE WHEN {fault.when} THEN {_as_struct(fault)} END" for fault in found
+        )
+        connection.execute(
+            "INSERT INTO refusal "
+            f"SELECT {literal(table.name)}, number, f[1].c, f[1].d, f[1].v, "
+            "array_to_string(list_transform(f, lambda x: x.m), '; ') "
+            "|| ' (' || place || ')' FROM ("
+            f"SELECT number, {checks.place(table)} AS place, "
+            f"list_filter([{cases}], lambda x: x IS NOT NULL) AS f "
+            f"FROM ({checks.staged(table, stored, suspects)}))"
+        )
+    connection.execute("DROP TABLE suspect")
     _find_repeated(connection, table, stored)
 
 
 def _find_repeated(
     connection: duckdb.DuckDBPyConnection, table: Table, stored: Mapping[str, str]
 ) -> None:
-    columns = table.columns if table.key is None else (table.column(table.key),)
-    keys = [reading.as_text(column, stored[column.name]) for column in columns]
-    named = ", ".join(f"{key} AS k{i}" for i, key in enumerate(keys))
-    names = ", ".join(f"k{i}" for i in range(len(keys)))
-    same = " AND ".join(f"r.k{i} IS NOT DISTINCT FROM d.k{i}" for i in range(len(keys)))
-    fault = checks.duplicate_fault(table, stored)
-    kept = _left_out(table)
+    """A repeat counts only among rows that pass every other check."""
+    names = checks.same_row(table)
+    keys = ", ".join(names)
+    rows = checks.staged(table, stored, f"{_logged(table)} WHERE {_left_out(table)}")
     connection.execute(
-        f"CREATE TEMP TABLE repeated AS SELECT {names}, min(number) AS first FROM ("
-        f"SELECT rowid AS number, {named} FROM {_logged(table)} WHERE {kept}) "
-        f"GROUP BY {names} HAVING count(*) > 1"
+        f"CREATE TEMP TABLE repeated AS SELECT {keys}, min(number) AS first "
+        f"FROM ({rows}) GROUP BY {keys} HAVING count(*) > 1"
     )
     if _count(connection, "SELECT count(*) FROM repeated"):
-        text = checks.message(fault, checks.place(table, stored))
+        fault = checks.duplicate_fault(table)
+        same = " AND ".join(f"r.{name} IS NOT DISTINCT FROM d.{name}" for name in names)
         connection.execute(
             f"INSERT INTO refusal SELECT {literal(table.name)}, r.number, "
             f"{literal(fault.column)}, 'duplicate', r.value, r.message FROM ("
-            f"SELECT rowid AS number, {named}, {fault.value} AS value, "
-            f"{text} AS message FROM {_logged(table)} WHERE {kept}) r "
+            f"SELECT number, {keys}, {fault.value} AS value, {checks.message(fault)} "
+            f"|| ' (' || {checks.place(table)} || ')' AS message FROM ({rows})) r "
             f"JOIN repeated d ON {same} WHERE r.number > d.first"
         )
     connection.execute("DROP TABLE repeated")
 
 
-def _as_struct(fault: checks.Fault, where: str) -> str:
+def _as_struct(fault: checks.Fault) -> str:
     return (
         f"{{'c': {literal(fault.column)}, 'd': {literal(fault.code)}, "
-        f"'v': left({fault.value}, 200), 'm': {checks.message(fault, where)}}}"
+        f"'v': left({fault.value}, {checks.KEPT_CHARACTERS}), "
+        f"'m': {checks.message(fault)}}}"
     )
 
 
@@ -245,11 +267,15 @@ def _left_out(table: Table) -> str:
 
 def _view(table: Table, stored: Mapping[str, str], any_refused: bool) -> str:
     columns = ", ".join(
-        f"{reading.as_value(column, stored[column.name])} AS {quoted(column.name)}"
+        f"{_value(column, stored[column.name])} AS {quoted(column.name)}"
         for column in table.columns
     )
     where = f" WHERE {_left_out(table)}" if any_refused else ""
     return f"CREATE VIEW {table.name} AS SELECT {columns} FROM {_logged(table)}{where}"
+
+
+def _value(column: Column, stored: str) -> str:
+    return reading.value(column, stored, reading.held(column, stored))
 
 
 def _info_view(stored: Stored) -> str:

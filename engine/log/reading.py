@@ -1,9 +1,9 @@
 """How each column of an opened file is read, whatever type it was stored as.
 
 A file written by this project stores the declared types; one written elsewhere may
-hold words as plain text, times as dates or with a zone, numbers as decimals. Each is
-read here as an SQL expression that gives NULL both for a missing and for an unreadable
-value; ``as_text`` tells the two apart.
+hold words as plain text, times as dates or with a zone, numbers as decimals. Two SQL
+expressions read any of them: ``held`` says what stands in the file (NULL if nothing),
+``value`` brings that to the declared type (NULL if it cannot be read as such).
 """
 
 from __future__ import annotations
@@ -13,16 +13,18 @@ import re
 from engine.columns import UNKNOWN, Column
 from engine.log.schema import literal, quoted, words_type
 
+_WHOLE = re.compile(r"U?(TINY|SMALL|BIG)?INT(EGER)?$")
 _NUMBERS = re.compile(r"(U?(TINY|SMALL|BIG|HUGE)?INT(EGER)?|DOUBLE|FLOAT|DECIMAL.*)$")
 _TIMES = re.compile(r"(TIMESTAMP.*|DATE)$")
 _TEXTS = re.compile(r"(VARCHAR|ENUM\(.*|UUID)$", re.DOTALL)
 
 # Year first, always: a day-first or month-first date would be read as some other day.
-_ISO_TIME = (
-    r"\d{4}-\d{2}-\d{2}([ T]\d{2}:\d{2}(:\d{2}(\.\d{1,9})?)?"
+# The hour ends at 23: DuckDB would read 24:00 as the next day without a word.
+ISO_TIME = (
+    r"\d{4}-\d{2}-\d{2}([ T]([01]\d|2[0-3]):\d{2}(:\d{2}(\.\d{1,9})?)?"
     r"( ?(Z|[+-]\d{2}(:?\d{2})?))?)?"
 )
-_YES, _NO = ("yes", "y", "true", "1"), ("no", "n", "false", "0")
+YES, NO = ("yes", "y", "true", "1"), ("no", "n", "false", "0")
 
 
 def stored_ok(column: Column, stored: str) -> bool:
@@ -38,75 +40,75 @@ def stored_ok(column: Column, stored: str) -> bool:
     return column.kind != "word" and bool(_NUMBERS.match(stored))
 
 
-def as_text(column: Column, stored: str) -> str:
-    """The value as stored, as trimmed text; NULL where nothing stands."""
-    name = quoted(column.name)
-    if _TEXTS.match(stored):
-        text = f"nullif(trim({name}::VARCHAR), '')"
-        # "unknown" says as much as an empty cell, in a column of any kind but text.
-        if column.kind in {"word", "number", "count", "yes_no", "time"}:
-            return f"nullif({text}, {literal(UNKNOWN)})"
-        return text
-    return f"{name}::VARCHAR"
-
-
-def as_value(column: Column, stored: str) -> str:
-    """The value in the declared type; NULL where missing or unreadable."""
-    name = quoted(column.name)
-    text = as_text(column, stored)
-    if column.kind == "word":
-        return _word(column, stored, text)
-    if column.kind == "number":
-        number = f"TRY_CAST({text if _TEXTS.match(stored) else name} AS DOUBLE)"
-        return f"CASE WHEN isfinite({number}) THEN {number} END"
-    if column.kind == "count":
-        return _count(stored, name, text)
-    if column.kind == "yes_no":
-        return _yes_no(stored, name, text)
-    if column.kind == "time":
-        return _time(stored, name, text)
-    return text
-
-
 def exact_words(column: Column, stored: str) -> bool:
     """Whether the file already stores this column as exactly our word type."""
     listed = ", ".join(literal(word) for word in column.words)
     return stored == f"ENUM({listed})"
 
 
-def _word(column: Column, stored: str, text: str) -> str:
-    name, words = quoted(column.name), words_type(column)
+def held(column: Column, stored: str) -> str:
+    """What stands in the file: text trimmed, other types as they are.
+
+    Blank text, and the word "unknown" where it is not free text, are nothing.
+    """
+    name = quoted(column.name)
+    if not _TEXTS.match(stored) or exact_words(column, stored):
+        return name
+    text = f"nullif(trim({name}::VARCHAR), '')"
+    if column.kind in {"id", "token", "text"}:
+        return text
+    return f"nullif({text}, {literal(UNKNOWN)})"
+
+
+def value(column: Column, stored: str, held: str) -> str:
+    """The declared type of what ``held`` gives; NULL where it cannot be read."""
+    if column.kind == "word":
+        return _word(column, stored, held)
+    if column.kind == "number":
+        number = f"TRY_CAST({held} AS DOUBLE)"
+        return f"CASE WHEN isfinite({number}) THEN {number} END"
+    if column.kind == "count":
+        return _count(stored, held)
+    if column.kind == "yes_no":
+        return _yes_no(stored, held)
+    if column.kind == "time":
+        return _time(stored, held)
+    return held if stored == "VARCHAR" else f"{held}::VARCHAR"
+
+
+def _word(column: Column, stored: str, held: str) -> str:
+    words = words_type(column)
     if exact_words(column, stored):
-        return f"CASE WHEN {name} <> {literal(UNKNOWN)} THEN {name}::{words} END"
-    return f"nullif(TRY_CAST(lower({text}) AS {words}), {literal(UNKNOWN)})"
+        return f"CASE WHEN {held} <> {literal(UNKNOWN)} THEN {held}::{words} END"
+    return f"nullif(TRY_CAST(lower({held}) AS {words}), {literal(UNKNOWN)})"
 
 
-def _count(stored: str, name: str, text: str) -> str:
-    if re.match(r"U?(TINY|SMALL|BIG)?INT(EGER)?$", stored):
-        return f"TRY_CAST({name} AS BIGINT)"
-    number = f"TRY_CAST({text} AS DOUBLE)"
+def _count(stored: str, held: str) -> str:
+    if _WHOLE.match(stored):
+        return f"TRY_CAST({held} AS BIGINT)"
+    number = f"TRY_CAST({held} AS DOUBLE)"
     whole = f"isfinite({number}) AND {number} = trunc({number})"
     return f"CASE WHEN {whole} THEN TRY_CAST({number} AS BIGINT) END"
 
 
-def _yes_no(stored: str, name: str, text: str) -> str:
+def _yes_no(stored: str, held: str) -> str:
     if stored == "BOOLEAN":
-        return name
-    word = f"lower({text})"
+        return held
     if not _TEXTS.match(stored):
-        word = f"CASE {name} WHEN 1 THEN '1' WHEN 0 THEN '0' END"
-    yes, no = (", ".join(map(literal, words)) for words in (_YES, _NO))
+        return f"CASE {held} WHEN 1 THEN true WHEN 0 THEN false END"
+    yes, no = (", ".join(map(literal, words)) for words in (YES, NO))
+    word = f"lower({held})"
     return f"CASE WHEN {word} IN ({yes}) THEN true WHEN {word} IN ({no}) THEN false END"
 
 
-def _time(stored: str, name: str, text: str) -> str:
+def _time(stored: str, held: str) -> str:
     if _TEXTS.match(stored):
-        iso = f"regexp_full_match({text}, {literal(_ISO_TIME)})"
-        # DuckDB reads 24:00 as the next day without a word; here it is unreadable.
-        plain = f"{text} NOT SIMILAR TO '.{{10}}[ T]24.*'"
         # Cast by way of the zoned type: the plain one drops a written offset.
-        at = f"TRY_CAST({text} AS TIMESTAMPTZ) AT TIME ZONE 'UTC'"
-        return f"CASE WHEN {iso} AND {plain} THEN {at} END"
+        # It wants no blank before an offset, and the colon many programs leave out.
+        colon = f"regexp_replace({held}, ' ?([+-]\\d{{2}}):?(\\d{{2}})$', '\\1:\\2')"
+        at = f"TRY_CAST({colon} AS TIMESTAMPTZ) AT TIME ZONE 'UTC'"
+        iso = f"regexp_full_match({held}, {literal(ISO_TIME)})"
+        return f"CASE WHEN {iso} THEN {at} END"
     if stored == "TIMESTAMP WITH TIME ZONE":
-        name = f"({name} AT TIME ZONE 'UTC')"
-    return f"CASE WHEN isfinite({name}) THEN TRY_CAST({name} AS TIMESTAMP) END"
+        held = f"({held} AT TIME ZONE 'UTC')"
+    return f"CASE WHEN isfinite({held}) THEN TRY_CAST({held} AS TIMESTAMP) END"
