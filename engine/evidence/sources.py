@@ -77,3 +77,17 @@ SEN_1968 = Source(
     title="Estimates of the regression coefficient based on Kendall's tau",
     journal="Journal of the American Statistical Association 63:1379",
 )
+GOVONI_2012 = Source(
+    key="GOVONI_2012",
+    authors="Govoni L and others",
+    year=2012,
+    title="Delivered against set values of intensive-care ventilators",
+    journal="Medical Devices (Auckland), doi 10.2147/MDER.S35864",
+)
+SANBORN_2005 = Source(
+    key="SANBORN_2005",
+    authors="Sanborn WG",
+    year=2005,
+    title="Accuracy of flow and pressure sensors in hospital ventilators",
+    journal="Respiratory Care",
+)
