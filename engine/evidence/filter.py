@@ -112,3 +112,10 @@ FORECAST_HORIZON_FRAC = Number(
     where="how far ahead a date is given, in observed spans",
     known="ours",
 )
+SIGN_ARRANGEMENTS_COUNT = Number(
+    value=9999,
+    unit="count",
+    source=OURS,
+    where="random signs drawn where all are too many",
+    known="ours",
+)

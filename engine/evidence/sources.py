@@ -91,3 +91,27 @@ SANBORN_2005 = Source(
     title="Accuracy of flow and pressure sensors in hospital ventilators",
     journal="Respiratory Care",
 )
+AGRESTI_1990 = Source(
+    key="AGRESTI_1990",
+    authors="Agresti A",
+    year=1990,
+    title="Categorical Data Analysis",
+    journal="Wiley",
+    known="from memory",
+)
+BRESLOW_1980 = Source(
+    key="BRESLOW_1980",
+    authors="Breslow NE, Day NE",
+    year=1980,
+    title="Statistical Methods in Cancer Research, volume 1",
+    journal="IARC Scientific Publications 32",
+    known="from memory",
+)
+MACLURE_1991 = Source(
+    key="MACLURE_1991",
+    authors="Maclure M",
+    year=1991,
+    title="The case-crossover design",
+    journal="American Journal of Epidemiology 133:144",
+    address="pubmed 1985444",
+)

@@ -124,7 +124,7 @@ def fieller_forecast(
     noise = 1 / n + (1 / m if single else 0.0)
     spread = quantile * math.sqrt(error * (above**2 / sxx + (slope**2 - bent) * noise))
     ends = [
-        x.mean() + (slope * above + sign * spread) / (slope**2 - bent)
+        float(x.mean() + (slope * above + sign * spread) / (slope**2 - bent))
         for sign in (-1, 1)
     ]
     return Forecast(
