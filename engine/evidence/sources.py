@@ -115,3 +115,11 @@ MACLURE_1991 = Source(
     journal="American Journal of Epidemiology 133:144",
     address="pubmed 1985444",
 )
+FARRINGTON_1995 = Source(
+    key="FARRINGTON_1995",
+    authors="Farrington CP",
+    year=1995,
+    title="Relative incidence estimation from case series",
+    journal="Biometrics 51:228",
+    known="from memory",
+)

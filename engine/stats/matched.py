@@ -12,14 +12,13 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.optimize import brentq
 from scipy.stats import beta, binom, chi2
 
 from engine.evidence.filter import (
     EXACT_ARRANGEMENTS_COUNT,
     SIGN_ARRANGEMENTS_COUNT,
 )
-from engine.stats.odds import NO_INFORMATION, Ratio, cover_of, normal_quantile
+from engine.stats.odds import Ratio, cover_of, normal_quantile
 
 NO_DISCORDANT = "no pair differs, so the pairs say nothing about the exposure"
 RUNS_AWAY = "the estimate has no end: one side of the comparison is empty"
@@ -175,52 +174,53 @@ def sign_flip_p(
     return (beaten + 1) / (count + 1), count, False
 
 
-def self_controlled_rate_ratio(
-    events_exposed: np.ndarray,
-    events_other: np.ndarray,
-    time_exposed: np.ndarray,
-    time_other: np.ndarray,
+def self_controlled(
+    unit: np.ndarray,
+    events: np.ndarray,
+    time_at_risk: np.ndarray,
+    exposures: np.ndarray,
+    names: Sequence[str] = (),
     cover: float | None = None,
-) -> Ratio:
-    """Rate of faults in exposed against other time, each ventilator its own control.
+) -> Fitted:
+    """Rates of faults in exposed against other time, each unit its own control.
 
-    Conditional Poisson likelihood, one exposure without age groups; the interval is
-    that of the log ratio.
-    Source   Farrington 1995 (from memory). Assumes a fault does not change later
-             exposure; leave out the time after it where it does.
+    Conditional Poisson likelihood: given how many events a unit had, where in its
+    time they fell. Units without events or with exposures all alike say nothing; they
+    are dropped and counted.
+
+    Shapes   one row a stretch of time: its unit, its events, its length, and its
+             exposures (n by k; ages or calendar time may be among them)
+    Source   FARRINGTON_1995. Assumes an event does not change later exposure; leave
+             out the time after it where it does.
+    Checked  tests/engine/stats/test_matched.py, against a reference library
     """
-    x, o = np.asarray(events_exposed, float), np.asarray(events_other, float)
-    t, u = np.asarray(time_exposed, float), np.asarray(time_other, float)
-    kept = (x + o > 0) & (t > 0) & (u > 0)
-    x, o, t, u = x[kept], o[kept], t[kept], u[kept]
-    dropped = int((~kept).sum())
-    if x.sum() == 0 or o.sum() == 0:
-        ratio = math.nan if len(x) == 0 else (0.0 if x.sum() == 0 else math.inf)
-        return Ratio(
-            ratio=ratio,
-            low=0.0,
-            high=math.inf,
-            p=math.nan,
-            sets_used=len(x),
-            sets_dropped=dropped,
-            refusal=NO_INFORMATION,
-        )
-
-    def score(log_ratio: float) -> float:
-        share = t * math.exp(log_ratio) / (t * math.exp(log_ratio) + u)
-        return float((x - (x + o) * share).sum())
-
-    log_ratio = brentq(score, -_RUNAWAY, _RUNAWAY)
-    share = t * math.exp(log_ratio) / (t * math.exp(log_ratio) + u)
-    se = 1 / math.sqrt(float(((x + o) * share * (1 - share)).sum()))
+    x = np.asarray(exposures, float)
+    x = x[:, None] if x.ndim == 1 else x
+    y, time = np.asarray(events, float), np.asarray(time_at_risk, float)
+    labels, code = np.unique(np.asarray(unit), return_inverse=True)
+    good = (time > 0) & np.isfinite(x).all(axis=1)
+    x, y, time, code = x[good], y[good], time[good], code[good]
+    kept = np.isin(code, _telling_units(code, y, x))
+    x, y, time, code = x[kept], y[kept], time[kept], code[kept]
+    named = tuple(names) or tuple(f"exposure {i + 1}" for i in range(x.shape[1]))
+    used = len(np.unique(code))
+    if used == 0:
+        return _unfitted(named, len(labels), NO_DISCORDANT)
+    estimate, information = _conditional_poisson(x, y, time, code)
+    if estimate is None:
+        return _unfitted(named, len(labels), RUNS_AWAY)
+    se = np.sqrt(np.diag(np.linalg.inv(information)))
     half = normal_quantile(cover_of(cover)) * se
-    return Ratio(
-        ratio=math.exp(log_ratio),
-        low=math.exp(log_ratio - half),
-        high=math.exp(log_ratio + half),
-        p=float(chi2.sf((log_ratio / se) ** 2, 1)),
-        sets_used=len(x),
-        sets_dropped=dropped,
+    return Fitted(
+        names=named,
+        beta=tuple(map(float, estimate)),
+        se=tuple(map(float, se)),
+        ratio=tuple(map(float, np.exp(estimate))),
+        low=tuple(map(float, np.exp(estimate - half))),
+        high=tuple(map(float, np.exp(estimate + half))),
+        p=tuple(map(float, chi2.sf((estimate / se) ** 2, 1))),
+        sets_used=used,
+        sets_dropped=len(labels) - used,
     )
 
 
@@ -254,7 +254,7 @@ def comparable_windows(
     )
 
 
-_RUNAWAY = 30.0  # bounds of a search on the log scale
+_STEPS = 50  # of Newton's method; it settles in a handful or not at all
 _FAR = 8.0  # log odds a standard deviation beyond which there is no maximum to print
 
 
@@ -267,6 +267,42 @@ def _informative_sets(sets: np.ndarray, y: np.ndarray, x: np.ndarray) -> np.ndar
         mean = np.bincount(code, column) / n
         differs |= np.bincount(code, (column - mean[code]) ** 2) > 1e-12
     return labels[(cases > 0) & (cases < n) & differs]
+
+
+def _telling_units(code: np.ndarray, y: np.ndarray, x: np.ndarray) -> np.ndarray:
+    n = np.maximum(np.bincount(code), 1)
+    differs = np.zeros(len(n), bool)
+    for column in x.T:
+        mean = np.bincount(code, column) / n
+        differs |= np.bincount(code, (column - mean[code]) ** 2) > 1e-12
+    return np.flatnonzero(differs & (np.bincount(code, y) > 0))
+
+
+def _conditional_poisson(
+    x: np.ndarray, y: np.ndarray, time: np.ndarray, code: np.ndarray
+) -> tuple[np.ndarray | None, np.ndarray]:
+    """Newton's method; no estimate where it does not settle."""
+    estimate = np.zeros(x.shape[1])
+    total = np.bincount(code, y)[code]
+    for _ in range(_STEPS):
+        weight = time * np.exp(x @ estimate)
+        share = weight / np.bincount(code, weight)[code]
+        means = np.column_stack(
+            [np.bincount(code, share * column)[code] for column in x.T]
+        )
+        score = (y - total * share) @ x
+        away = x - means
+        information = (away * (total * share)[:, None]).T @ away
+        try:
+            step = np.linalg.solve(information, score)
+        except np.linalg.LinAlgError:
+            return None, information
+        estimate = estimate + step
+        if not np.isfinite(estimate).all() or np.abs(estimate).max() > _FAR * 2:
+            return None, information
+        if np.abs(step).max() < 1e-10:
+            return estimate, information
+    return None, information
 
 
 def _unfitted(names: tuple[str, ...], sets: int, why: str) -> Fitted:
