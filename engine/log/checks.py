@@ -10,7 +10,7 @@ The SQL speaks of two columns made by ``staged`` for each column of the table:
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 from engine.columns import Column, Table
@@ -57,14 +57,20 @@ class Fault:
     must: str
 
 
-def staged(table: Table, stored: Mapping[str, str], source: str) -> str:
-    """SQL for each row's number, what stands in every column, and its value.
+def staged(
+    columns: Sequence[Column],
+    stored: Mapping[str, str],
+    source: str,
+    also: Sequence[str] = (),
+) -> str:
+    """SQL for each row's number, what stands in these columns, and their values.
 
-    ``source`` is the FROM clause. Two nested steps, so that each value is read once
-    however many checks ask for it.
+    ``source`` is the FROM clause, ``also`` names columns of it to hand on as they are.
+    Two nested steps, so that each value is read once however many checks ask for it.
     """
-    held, values = [], []
-    for column in table.columns:
+    held = [f"{quoted(name)}" for name in also]
+    values = []
+    for column in columns:
         kind = stored[column.name]
         held.append(f"{reading.held(column, kind)} AS {_held(column)}")
         values.append(
@@ -109,16 +115,15 @@ def duplicate_fault(table: Table) -> Fault:
     return Fault(table.key, "duplicate", "true", key, must)
 
 
-def same_row(table: Table) -> list[str]:
+def same_row(table: Table) -> Sequence[Column]:
     """The columns that no two rows may share: the id, or else all of them."""
-    columns = table.columns if table.key is None else (table.column(table.key),)
-    return [_read(column) for column in columns]
+    return table.columns if table.key is None else (table.column(table.key),)
 
 
-def place(table: Table) -> str:
+def place(table: Table, row: str) -> str:
     """SQL for the words that say which row: "treatment 1042", or "treatment row 7"."""
     noun = table.key.rsplit("_", 1)[0] if table.key else table.label.lower()
-    by_row = f"{literal(noun + ' row ')} || (number + 1)"
+    by_row = f"{literal(noun + ' row ')} || ({row})"
     if table.key is None:
         return f"({by_row})"
     key = shown(_read(table.column(table.key)))

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import hashlib
 import os
-from collections.abc import Mapping, Sequence
+from collections.abc import Mapping
 from pathlib import Path
 from typing import Any
 from zoneinfo import ZoneInfo
@@ -25,18 +25,12 @@ from engine.columns import (
     Table,
 )
 from engine.errors import LogUnreadable
-from engine.log import checks, guard, reading
+from engine.log import guard, reading
 from engine.log.schema import create_types, literal, quoted, sql_type, wal_of
+from engine.log.sift import make_refusal, not_refused, sift
 
 Stored = Mapping[str, Mapping[str, str]]
 Stamp = tuple[tuple[int, int, int] | None, ...]
-
-_REFUSAL = """
-CREATE TABLE refusal (
-  "table" VARCHAR, number BIGINT, "column" VARCHAR, code VARCHAR, value VARCHAR,
-  message VARCHAR
-)
-"""
 
 
 class Log:
@@ -179,90 +173,15 @@ def _make_views(
     connection: duckdb.DuckDBPyConnection, path: Path, stored: Stored
 ) -> None:
     create_types(connection)
-    connection.execute(_REFUSAL)
-    refused_counts = {}
+    make_refusal(connection)
+    counts = {}
     for table in RECORD_TABLES:
-        _find_refused(connection, table, stored[table.name])
-        refused_counts[table.name] = _count(
-            connection,
-            f'SELECT count(*) FROM refusal WHERE "table" = {literal(table.name)}',
-        )
-        connection.execute(
-            _view(table, stored[table.name], any_refused=refused_counts[table.name] > 0)
-        )
+        types = stored[table.name]
+        counts[table.name] = sift(connection, table, types, _logged(table))
+        connection.execute(_view(table, types, any_refused=counts[table.name] > 0))
     connection.execute(_info_view(stored))
-    connection.execute(_refused_view(path, stored))
-    connection.execute(_accounts(stored, refused_counts))
-
-
-def _find_refused(
-    connection: duckdb.DuckDBPyConnection, table: Table, stored: Mapping[str, str]
-) -> None:
-    """Put the table's failing rows, then its repeated ids, into ``refusal``."""
-    found = checks.faults(table, stored)
-    flags = ", ".join([*checks.never(table), *(fault.when for fault in found)])
-    # An aggregate, not a filter: DuckDB would push a filter down through the staging
-    # and read every value again for every check that asks for it.
-    connection.execute(
-        "CREATE TEMP TABLE suspect AS SELECT unnest(numbers) AS number FROM ("
-        f"SELECT list(number) FILTER (WHERE greatest({flags})) AS numbers "
-        f"FROM ({checks.staged(table, stored, _logged(table))}))"
-    )
-    if _count(connection, "SELECT count(*) FROM suspect"):
-        suspects = f"{_logged(table)} WHERE rowid IN (SELECT number FROM suspect)"
-        cases = ", ".join(
-            f"CASE WHEN {fault.when} THEN {_as_struct(fault)} END" for fault in found
-        )
-        connection.execute(
-            "INSERT INTO refusal "
-            f"SELECT {literal(table.name)}, number, f[1].c, f[1].d, f[1].v, "
-            "array_to_string(list_transform(f, lambda x: x.m), '; ') "
-            "|| ' (' || place || ')' FROM ("
-            f"SELECT number, {checks.place(table)} AS place, "
-            f"list_filter([{cases}], lambda x: x IS NOT NULL) AS f "
-            f"FROM ({checks.staged(table, stored, suspects)}))"
-        )
-    connection.execute("DROP TABLE suspect")
-    _find_repeated(connection, table, stored)
-
-
-def _find_repeated(
-    connection: duckdb.DuckDBPyConnection, table: Table, stored: Mapping[str, str]
-) -> None:
-    """A repeat counts only among rows that pass every other check."""
-    names = checks.same_row(table)
-    keys = ", ".join(names)
-    rows = checks.staged(table, stored, f"{_logged(table)} WHERE {_left_out(table)}")
-    connection.execute(
-        f"CREATE TEMP TABLE repeated AS SELECT {keys}, min(number) AS first "
-        f"FROM ({rows}) GROUP BY {keys} HAVING count(*) > 1"
-    )
-    if _count(connection, "SELECT count(*) FROM repeated"):
-        fault = checks.duplicate_fault(table)
-        same = " AND ".join(f"r.{name} IS NOT DISTINCT FROM d.{name}" for name in names)
-        connection.execute(
-            f"INSERT INTO refusal SELECT {literal(table.name)}, r.number, "
-            f"{literal(fault.column)}, 'duplicate', r.value, r.message FROM ("
-            f"SELECT number, {keys}, {fault.value} AS value, {checks.message(fault)} "
-            f"|| ' (' || {checks.place(table)} || ')' AS message FROM ({rows})) r "
-            f"JOIN repeated d ON {same} WHERE r.number > d.first"
-        )
-    connection.execute("DROP TABLE repeated")
-
-
-def _as_struct(fault: checks.Fault) -> str:
-    return (
-        f"{{'c': {literal(fault.column)}, 'd': {literal(fault.code)}, "
-        f"'v': left({fault.value}, {checks.KEPT_CHARACTERS}), "
-        f"'m': {checks.message(fault)}}}"
-    )
-
-
-def _left_out(table: Table) -> str:
-    return (
-        f"rowid NOT IN (SELECT number FROM refusal "
-        f'WHERE "table" = {literal(table.name)})'
-    )
+    connection.execute(_refused_view(path))
+    connection.execute(_accounts(counts))
 
 
 def _view(table: Table, stored: Mapping[str, str], any_refused: bool) -> str:
@@ -270,7 +189,7 @@ def _view(table: Table, stored: Mapping[str, str], any_refused: bool) -> str:
         f"{_value(column, stored[column.name])} AS {quoted(column.name)}"
         for column in table.columns
     )
-    where = f" WHERE {_left_out(table)}" if any_refused else ""
+    where = f" WHERE {not_refused(table)}" if any_refused else ""
     return f"CREATE VIEW {table.name} AS SELECT {columns} FROM {_logged(table)}{where}"
 
 
@@ -282,7 +201,7 @@ def _info_view(stored: Stored) -> str:
     return _view(LOG_INFO, stored["log_info"], any_refused=False)
 
 
-def _refused_view(path: Path, stored: Stored) -> str:
+def _refused_view(path: Path) -> str:
     """Rows refused at intake, then rows refused now with their text as stored."""
     parts = [
         "SELECT "
@@ -303,11 +222,11 @@ def _refused_view(path: Path, stored: Stored) -> str:
     return "CREATE VIEW refused AS " + " UNION ALL ".join(parts)
 
 
-def _accounts(stored: Stored, refused_counts: Mapping[str, int]) -> str:
+def _accounts(counts: Mapping[str, int]) -> str:
     names = [table.name for table in RECORD_TABLES]
     rows = ", ".join(
         f"({place}, {literal(table.name)}, "
-        f"(SELECT count(*) FROM {_logged(table)}), {refused_counts[table.name]})"
+        f"(SELECT count(*) FROM {_logged(table)}), {counts[table.name]})"
         for place, table in enumerate(RECORD_TABLES)
     )
     listed = ", ".join(literal(name) for name in names)
@@ -330,8 +249,3 @@ def _accounts(stored: Stored, refused_counts: Mapping[str, int]) -> str:
 
 def _logged(table: Table) -> str:
     return f"logged.main.{quoted(table.name)}"
-
-
-def _count(connection: duckdb.DuckDBPyConnection, sql: str) -> int:
-    row: Sequence[Any] | None = connection.execute(sql).fetchone()
-    return int(row[0]) if row else 0
