@@ -244,7 +244,8 @@ def comparable_windows(
     else:
         windows = "window" if known == 1 else "windows"
         among = f"it was present in {present} of {known} comparable {windows}"
-    rest = f"; {unknown} more do not say" if unknown else ""
+    verb = "does" if unknown == 1 else "do"
+    rest = f"; {unknown} more {verb} not say" if unknown else ""
     return Windows(
         present_count=present,
         known_count=known,
