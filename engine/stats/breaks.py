@@ -1,9 +1,10 @@
 """Did something change that nobody wrote down: steps in a series.
 
 A loading filter rises, so a plain shift of level is the wrong question for it: a
-straight rise alone would answer yes. ``line_and_step`` asks whether a line with one
-downward step fits better than the line. ``pettitt`` and ``one_break`` are for series
-that keep a level, such as monthly medians.
+straight rise alone would answer yes. ``line_and_step`` asks whether a rise with one
+downward step fits better than the rise alone; the rise may bend, because filters that
+clog speed up, and a bend taken for a straight line reads as a step. ``pettitt`` and
+``one_break`` are for series that keep a level, such as monthly medians.
 """
 
 from __future__ import annotations
@@ -81,13 +82,15 @@ def line_and_step(
     seed: int = 0,
     fewest: int | None = None,
     arrangements: int | None = None,
+    may_bend: bool = True,
 ) -> Step:
-    """Whether the readings dropped at some moment while rising on one slope.
+    """Whether the readings dropped at some moment while rising on one course.
 
     Scans   every place with enough readings on both sides where the reading really
-            falls; a curve that only bends is then no candidate.
-    p       share of rearrangements of the line's residuals that do as well: all of
-            them where they are few, otherwise drawn with the seed that is returned.
+            falls. The rise is a line, or with ``may_bend`` a line and its square.
+    p       share of rearrangements of what the rise leaves over that do as well: all
+            of them where they are few, otherwise drawn with the seed returned.
+    slope   and ``drop`` are those of a straight line with the step.
     Refuses fewer than ``fewest`` readings.
     Source  residual permutation; FREEDMAN_1983
     Checked tests/engine/stats/test_breaks.py; false alarms in detection.csv
@@ -98,18 +101,18 @@ def line_and_step(
         return _no_step(n, "too few readings to look for a change")
     if x[0] == x[-1]:
         return _no_step(n, "all readings were taken at one time")
-    places, steps = _candidates(x)
-    slope, fitted, left = _line(x, y)
-    shares, drops = _step_shares(left[None, :], steps, x)
-    best = _allowed(shares, drops, fitted, left[None, :], places)
+    rise = _rise(x, may_bend)
+    places, steps = _candidates(x, rise)
+    left = _off(y[None, :], rise)[0]
+    best = _allowed(*_step_shares(left[None, :], steps, rise), y[None, :], places)
     observed = float(best[0].max())
     if observed <= 0 or float((left**2).sum()) <= _ROUNDING * float((y**2).sum()):
-        return _straight(n, slope)
+        return _straight(n, x, y)
     at = int(places[int(best[0].argmax())])
     order, exact = _orders(n, seed, arrangements)
     mixed = left[order]
-    shares, drops = _step_shares(mixed, steps, x)
-    chance = _allowed(shares, drops, fitted, mixed, places).max(axis=1)
+    readings = (y - left)[None, :] + mixed
+    chance = _allowed(*_step_shares(mixed, steps, rise), readings, places).max(axis=1)
     beaten = int((chance >= observed * (1 - _ROUNDING)).sum())
     p = beaten / len(order) if exact else (beaten + 1) / (len(order) + 1)
     slope, drop = _with_step(x, y, at)
@@ -199,34 +202,34 @@ def _sorted(times: np.ndarray, values: np.ndarray) -> tuple[np.ndarray, np.ndarr
     return x[good][order], y[good][order]
 
 
-def _candidates(x: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """Places a step may stand at, and each step less its own straight line."""
+def _rise(x: np.ndarray, may_bend: bool) -> np.ndarray:
+    """Orthonormal columns the course without a change is made of."""
+    run = (x - x.mean()) / (x[-1] - x[0])
+    powers = [np.ones(len(x)), run, run**2] if may_bend else [np.ones(len(x)), run]
+    return np.linalg.qr(np.column_stack(powers))[0]
+
+
+def _off(rows: np.ndarray, rise: np.ndarray) -> np.ndarray:
+    """What the rise leaves over of each row."""
+    return rows - (rows @ rise) @ rise.T
+
+
+def _candidates(x: np.ndarray, rise: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Places a step may stand at, and what of each step the rise cannot make up."""
     side = int(SEGMENT_READINGS_COUNT)
     places = np.array(
         [k for k in range(side, len(x) - side + 1) if x[k] > x[k - 1]], dtype=int
     )
-    steps = (np.arange(len(x))[None, :] >= places[:, None]).astype(float)
-    return places, steps - _on_line(steps, x)
-
-
-def _on_line(rows: np.ndarray, x: np.ndarray) -> np.ndarray:
-    """The least-squares straight line of each row."""
-    run = x - x.mean()
-    slopes = rows @ run / (run @ run)
-    return rows.mean(axis=1, keepdims=True) + slopes[:, None] * run[None, :]
-
-
-def _line(x: np.ndarray, y: np.ndarray) -> tuple[float, np.ndarray, np.ndarray]:
-    fitted = _on_line(y[None, :], x)[0]
-    slope = (fitted[-1] - fitted[0]) / (x[-1] - x[0])
-    return float(slope), fitted, y - fitted
+    steps = _off((np.arange(len(x)) >= places[:, None]).astype(float), rise)
+    told = (steps**2).sum(axis=1) > _ROUNDING
+    return places[told], steps[told]
 
 
 def _step_shares(
-    residuals: np.ndarray, steps: np.ndarray, x: np.ndarray
+    residuals: np.ndarray, steps: np.ndarray, rise: np.ndarray
 ) -> tuple[np.ndarray, np.ndarray]:
     """Share of each row's misfit each step takes away, and the step's size."""
-    misfit = ((residuals - _on_line(residuals, x)) ** 2).sum(axis=1)
+    misfit = (_off(residuals, rise) ** 2).sum(axis=1)
     along = residuals @ steps.T
     lengths = (steps**2).sum(axis=1)
     with np.errstate(invalid="ignore", divide="ignore"):
@@ -235,16 +238,11 @@ def _step_shares(
 
 
 def _allowed(
-    shares: np.ndarray,
-    drops: np.ndarray,
-    fitted: np.ndarray,
-    residuals: np.ndarray,
-    places: np.ndarray,
+    shares: np.ndarray, drops: np.ndarray, readings: np.ndarray, places: np.ndarray
 ) -> np.ndarray:
     """Shares of the steps that go down where the reading itself goes down."""
     if len(places) == 0:
-        return np.zeros((len(residuals), 1))
-    readings = fitted[None, :] + residuals
+        return np.zeros((len(readings), 1))
     falls = readings[:, places] < readings[:, places - 1]
     return np.where(falls & (drops < 0), shares, 0.0)
 
@@ -279,8 +277,10 @@ def _no_step(n: int, why: str) -> Step:
     )
 
 
-def _straight(n: int, slope: float) -> Step:
+def _straight(n: int, x: np.ndarray, y: np.ndarray) -> Step:
     nan = math.nan
+    run = x - x.mean()
+    slope = float(run @ y / (run @ run))
     return Step(
         readings_count=n,
         at=None,

@@ -67,15 +67,37 @@ def test_readings_of_one_moment_are_not_searched():
     assert step.refusal == "all readings were taken at one time"
 
 
-def test_false_alarms_stay_near_the_level_asked_for():
-    """400 loading filters without a change, the level 5 %; four standard errors."""
+COURSES = {
+    "straight": lambda t: 0.01 * t,
+    "speeding up": lambda t: 0.00012 * t**2,
+    "level": lambda t: 0 * t,
+}
+
+
+@pytest.mark.parametrize("course", COURSES)
+def test_false_alarms_stay_near_the_level_asked_for(course):
+    """300 filters without a change, the level 5 %; four standard errors."""
     rng = np.random.default_rng(11)
-    t = np.arange(12) * 8.0
+    t = np.arange(14) * 8.0
     alarms = sum(
-        line_and_step(t, 2.2 + 0.01 * t + rng.normal(0, 0.1, 12), seed=k).p <= 0.05
-        for k in range(400)
+        line_and_step(t, 2.2 + COURSES[course](t) + rng.normal(0, 0.1, 14)).p <= 0.05
+        for _ in range(300)
     )
-    assert alarms / 400 < 0.05 + 4 * np.sqrt(0.05 * 0.95 / 400)
+    assert alarms / 300 < 0.05 + 4 * np.sqrt(0.05 * 0.95 / 300)
+
+
+def test_a_bend_taken_for_a_straight_line_would_read_as_a_change():
+    """Why the rise may bend: the same readings alarm far too often without it."""
+    rng = np.random.default_rng(11)
+    t = np.arange(20) * 8.0
+    alarms = sum(
+        line_and_step(
+            t, 2.2 + 0.00006 * t**2 + rng.normal(0, 0.1, 20), may_bend=False
+        ).p
+        <= 0.05
+        for _ in range(100)
+    )
+    assert alarms > 20
 
 
 def test_one_break_of_a_level_series_without_noise():
