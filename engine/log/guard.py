@@ -158,12 +158,12 @@ def _refuse_programs(connection: duckdb.DuckDBPyConnection, path: Path) -> None:
         ("macro", "duckdb_functions()", "function_name"),
         ("trigger", "duckdb_triggers()", "trigger_name"),
     ):
-        row = connection.execute(
+        rows = connection.execute(
             f"SELECT {name} FROM {function} WHERE database_name = 'logged' ORDER BY 1"
-        ).fetchone()
-        if row is not None:
+        ).fetchall()
+        if rows:
             raise LogUnreadable(
-                f"{path}: {str(row[0])[:60]} is a {kind}; "
+                f"{path}: {str(rows[0][0])[:60]} is a {kind}; "
                 "a log holds base tables only; not opened"
             )
 

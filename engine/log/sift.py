@@ -129,5 +129,4 @@ def _as_struct(fault: checks.Fault) -> str:
 
 
 def _count(connection: duckdb.DuckDBPyConnection, sql: str) -> int:
-    row = connection.execute(sql).fetchone()
-    return int(row[0]) if row else 0
+    return int(connection.execute(sql).fetchall()[0][0])
