@@ -119,3 +119,24 @@ SIGN_ARRANGEMENTS_COUNT = Number(
     where="random signs drawn where all are too many",
     known="ours",
 )
+POOLED_FILTERS_COUNT = Number(
+    value=5,
+    unit="count",
+    source=OURS,
+    where="filters below which aerosol and water are not told apart",
+    known="ours",
+)
+SHARE_DRAWS_COUNT = Number(
+    value=2000,
+    unit="count",
+    source=OURS,
+    where="draws of the two rates behind a share's interval",
+    known="ours",
+)
+SHARE_WIDTH_FRAC = Number(
+    value=0.5,
+    unit="frac",
+    source=OURS,
+    where="width of a share's interval beyond which it cannot tell",
+    known="ours",
+)
