@@ -53,9 +53,9 @@ def take_in(
     if not sources:
         raise SourceUnreadable("no source given; name the files to take in")
     taken = [place_source(i, path, site_map, zone) for i, path in enumerate(sources)]
-    with _working() as connection:
+    tables = [t for t in RECORD_TABLES if any(one.table is t for one in taken)]
+    with _working(tables) as connection:
         repaired = [_fill(connection, one, site_map) for one in taken]
-        tables = [t for t in RECORD_TABLES if any(one.table is t for one in taken)]
         for table in tables:
             _sift(connection, table, zone)
         rows = {table.name: _used(connection, table) for table in tables}
@@ -69,7 +69,7 @@ def take_in(
     return report
 
 
-def _working() -> duckdb.DuckDBPyConnection:
+def _working(tables: Sequence[Table]) -> duckdb.DuckDBPyConnection:
     connection = duckdb.connect(
         ":memory:",
         config={
@@ -86,7 +86,7 @@ def _working() -> duckdb.DuckDBPyConnection:
     connection.execute("SET TimeZone = 'UTC'")
     create_types(connection)
     make_refusal(connection)
-    for table in RECORD_TABLES:
+    for table in tables:
         columns = [f"{quoted(c.name)} VARCHAR" for c in table.columns]
         columns += [f"{quoted(n)} {kind}" for n, kind in doubt_columns(table).items()]
         connection.execute(

@@ -8,6 +8,7 @@ import pytest
 
 from engine.columns import SCHEMA_VERSION, TABLES
 from engine.log import write_log
+from engine.log.schema import create
 
 
 @pytest.fixture
@@ -42,22 +43,24 @@ def small(tmp_path):
 
 @pytest.fixture
 def foreign(tmp_path):
-    """Write a log with every column as text, rows as dicts of what somebody typed."""
+    """Write a log with the tables given as text, rows as dicts of what was typed."""
 
     def make(name="foreign.duckdb", zone="Etc/UTC", types=None, **rows):
         path = tmp_path / name
-        rows = {
-            "log_info": [{"schema_version": SCHEMA_VERSION, "site_zone": zone}],
-            **rows,
-        }
+        info = {"schema_version": SCHEMA_VERSION, "site_zone": zone}
+        rows = {"treatment": [], "log_info": [info], **rows}
         with duckdb.connect(str(path)) as connection:
+            create(connection)
             for table in TABLES:
+                if table.name not in rows:
+                    continue
                 columns = ", ".join(
                     f'"{c.name}" {(types or {}).get(c.name, "VARCHAR")}'
                     for c in table.columns
                 )
+                connection.execute(f'DROP TABLE "{table.name}"')
                 connection.execute(f'CREATE TABLE "{table.name}" ({columns})')
-                for row in rows.get(table.name, []):
+                for row in rows[table.name]:
                     names = ", ".join(f'"{name}"' for name in row)
                     holes = ", ".join("?" for _ in row)
                     connection.execute(
