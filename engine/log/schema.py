@@ -18,6 +18,10 @@ import pyarrow as pa
 
 from engine.columns import SCHEMA_VERSION, TABLES, Column, Table
 
+# The newest format that puts no random identifier into the file: the same rows give the
+# same bytes, on one thread.
+STORAGE = "v1.3.0"
+
 _SQL_TYPES = {
     "id": "VARCHAR",
     "token": "VARCHAR",
@@ -92,9 +96,9 @@ def write_log(
 ) -> None:
     """Write a new log file of these rows, in place of any file of that name.
 
-    Columns left out are missing throughout; NaN is missing. Times without a zone are
-    UTC. Rows must already hold the limits of ``engine.columns``: what does not belongs
-    in the table ``bad_row``.
+    The same rows give the same bytes. Columns left out are missing throughout; NaN is
+    missing. Times without a zone are UTC. Rows must already hold the limits of
+    ``engine.columns``: what does not belongs in the table ``bad_row``.
     Raises   ValueError for a table or column the log does not have, or a value a
              column cannot hold.
     """
@@ -129,9 +133,18 @@ def _build(
     if strangers:
         raise ValueError(f"a log has no table {strangers[0]}")
     with duckdb.connect(
-        str(path), config={"threads": 2, "python_enable_replacements": False}
+        ":memory:",
+        config={
+            "threads": 1,
+            "python_enable_replacements": False,
+            "temp_directory": f"{path}.spill",
+        },
     ) as connection:
         connection.execute("SET TimeZone = 'UTC'")
+        connection.execute(
+            f"ATTACH {literal(str(path))} AS built (STORAGE_VERSION '{STORAGE}')"
+        )
+        connection.execute("USE built")
         create(connection)
         for name, rows in tables.items():
             _insert(connection, known[name], rows)
@@ -139,7 +152,9 @@ def _build(
             "INSERT INTO log_info VALUES (?, ?, ?, ?)",
             [SCHEMA_VERSION, site_zone, _as_utc(created_at), sources],
         )
-        connection.execute("CHECKPOINT")
+        connection.execute("CHECKPOINT built")
+        connection.execute("USE memory")
+        connection.execute("DETACH built")
 
 
 def _insert(

@@ -122,3 +122,12 @@ def test_a_write_ahead_file_of_the_old_log_does_not_reach_the_new_one(small):
 
 def test_the_file_is_for_its_owner_only(small):
     assert os.stat(small).st_mode & 0o077 == 0
+
+
+def test_the_same_rows_give_the_same_bytes(small, tmp_path):
+    with open_log(small) as log:
+        rows = log.frame("SELECT * FROM treatment ORDER BY treatment_id")
+    rows = pd.concat([rows] * 3000).assign(treatment_id=[str(i) for i in range(6000)])
+    for name in ("a", "b"):
+        write_log(tmp_path / name, {"treatment": rows}, "Etc/UTC", CREATED, "twice")
+    assert (tmp_path / "a").read_bytes() == (tmp_path / "b").read_bytes()
