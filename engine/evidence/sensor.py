@@ -49,3 +49,45 @@ OWN_SPREAD_CHECKS_COUNT = Number(
     where="checks from which a ventilator's own spread is used",
     known="ours",
 )
+WATER_NEAR_H = Number(
+    value=12.0,
+    unit="h",
+    source=OURS,
+    where="how near the fault an entry about water counts",
+    known="ours",
+)
+GAS_NEAR_H = Number(
+    value=1.0,
+    unit="h",
+    source=OURS,
+    where="how long a treatment without an end is taken to run, and gas to linger",
+    known="ours",
+)
+EXAMINED_WITHIN_H = Number(
+    value=720.0,
+    unit="h",
+    source=OURS,
+    where="how long after the fault an examination still counts as one of it",
+    known="ours",
+)
+HUMID_NEAR_H = Number(
+    value=48.0,
+    unit="h",
+    source=OURS,
+    where="how near the fault a treatment tells how the gas was humidified",
+    known="ours",
+)
+HIGH_PLACE_FRAC = Number(
+    value=0.25,
+    unit="frac",
+    source=OURS,
+    where="share of ventilators that counts as the highest",
+    known="ours",
+)
+COMPARABLE_WINDOWS_COUNT = Number(
+    value=60,
+    unit="count",
+    source=OURS,
+    where="comparable windows looked back on, at most",
+    known="ours",
+)

@@ -132,7 +132,7 @@ def one_filter(
     found = review.lives[review.lives["filter_id"] == filter_id]
     if found.empty:
         raise UnknownId(f"no filter {filter_id} in the log")
-    facts = found.iloc[0].to_dict()
+    facts = {str(name): value for name, value in found.iloc[0].items()}
     readings = replay.frame(rows.READINGS, {"filters": [filter_id]})
     gathered = _gathered(replay)
     gathered = gathered[gathered["filter_id"] == filter_id].reset_index(drop=True)
