@@ -80,6 +80,8 @@ def drift_of(
              true where that check put the sensor right (a new era begins after it,
              and its own ratio is not used); ``left_out`` true where external gas ran.
     Weight   of the newest check in the average; limits at ``limit_sd`` of its spread.
+             A check further off than ``limit_sd`` of its own spread counts as so far
+             off only: one wild reading must not carry the average out.
     Spread   of one check about its level; none takes this ventilator's own, or the
              stated accuracy while it has few checks.
     Source   EWMA chart with time-varying limits, Roberts 1959 and the limits of Lucas
@@ -213,7 +215,8 @@ def _limits(
     weight: float,
     limit_sd: float,
 ) -> tuple[np.ndarray, np.ndarray]:
-    average = ewma(r, weight, level)
+    far = limit_sd * sd  # no single check counts for more than this
+    average = ewma(level + np.clip(r - level, -far, far), weight, level)
     half = ewma_half_width(len(r), weight, sd, limit_sd)
     pulled = 1 - (1 - weight) ** np.arange(1, len(r) + 1)
     return average, np.sqrt(half**2 + limit_sd**2 * level_var * pulled**2)
@@ -229,15 +232,16 @@ def _signal(
 ) -> int | None:
     """The first check at which a drift is called.
 
-    The average lies outside its limits and that check and the one before it lie off
-    on the same side, so that one wild reading is not a drift. Where both checks lie
-    off by less than the limit, the average must have been outside twice.
+    Either the average has been outside its limits twice running, with both checks
+    themselves off on that side; or two checks running lie off by more than the limit,
+    which is how a drift shows where checks are rare.
     """
     side = np.sign(average - level) * (np.abs(average - level) > half)
     own = np.sign(r - level) * (np.abs(r - level) > sd)
-    far = np.abs(r - level) > limit_sd * sd
-    pair = (side[1:] != 0) & (own[1:] == side[1:]) & (own[:-1] == side[1:])
-    off = pair & ((side[:-1] == side[1:]) | (far[1:] & far[:-1]))
+    far = own * (np.abs(r - level) > limit_sd * sd)
+    twice_out = (side[1:] != 0) & (side[1:] == side[:-1])
+    pair = (own[1:] == own[:-1]) & (own[1:] == side[1:]) & twice_out
+    off = pair | ((far[1:] != 0) & (far[1:] == far[:-1]))
     return int(off.argmax()) + 1 if off.any() else None
 
 
