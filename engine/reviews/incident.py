@@ -53,6 +53,7 @@ class LookBack:
     opened_by: str  # a sentence
     check_id: str | None
     hours_h: float | None
+    shown_from: pd.Timestamp  # earlier than from_at where the drift began before it
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -88,6 +89,9 @@ class Incident:
     treatments: pd.DataFrame
     burden: Burden
     checks: pd.DataFrame
+    filters: pd.DataFrame
+    readings: pd.DataFrame
+    events: pd.DataFrame
     drift: Drift
     drift_started_at: pd.Timestamp | None
     explanations: tuple[Explanation, ...]
@@ -139,29 +143,38 @@ def review_fault(
         "sensor": facts.get("sensor") or EXPIRATORY_FLOW,
         "happened_at": pd.Timestamp(facts["happened_at"]),
     }
-    look = _look_back(replay, facts)
-    asked = {"ventilator": facts["ventilator_token"], "from": look.from_at}
-    asked["to"] = look.to_at
     checks = _checks(replay, facts)
     drift, started_at, checks = _drift(replay, facts, checks)
-    treatments = replay.frame(rows.TREATMENTS, asked)
+    look = _look_back(replay, facts, started_at)
+    asked = {"ventilator": facts["ventilator_token"], "to": look.to_at}
+    shown = {**asked, "from": look.shown_from}
+    treatments = replay.frame(rows.TREATMENTS, shown)
+    treatments["since_check"] = treatments["started_at"] > look.from_at
     clock = clock_of(
         replay.frame(rows.OFFSETS, {"ventilator": facts["ventilator_token"]}),
         replay.policy.sensors.clock_offset_limit_s,
     )
     events = _events(replay, facts, look, clock)
-    readings = replay.frame(rows.READINGS, asked)
-    filters = replay.frame(rows.FILTERS, asked)
+    readings = replay.frame(rows.READINGS, shown)
+    filters = replay.frame(rows.FILTERS, shown)
     burden = _burden(replay, facts)
     windows = _windows(replay, facts)
     pairs, faults = _pairs(replay, facts)
     evidence = _evidence(
-        replay, facts, look, burden, treatments, events, checks, drift, started_at
+        replay,
+        facts,
+        look,
+        burden,
+        treatments[treatments["since_check"]],
+        events,
+        checks,
+        drift,
+        started_at,
     )
     explanations = explain(evidence)
     timeline = timeline_of(
         facts,
-        look.from_at,
+        look.shown_from,
         treatments,
         filters,
         readings,
@@ -189,11 +202,14 @@ def review_fault(
         treatments=treatments,
         burden=burden,
         checks=checks,
+        filters=filters,
+        readings=readings,
+        events=events,
         drift=drift,
         drift_started_at=started_at,
         explanations=explanations,
         exposed_ventilators=exposed,
-        patients=replay.frame(rows.PATIENTS, asked),
+        patients=replay.frame(rows.PATIENTS, {**asked, "from": look.from_at}),
         windows=windows,
         faults_count=faults,
         pairs=pairs,
@@ -206,7 +222,9 @@ def review_fault(
     )
 
 
-def _look_back(replay: Replay, facts: dict[str, Any]) -> LookBack:
+def _look_back(
+    replay: Replay, facts: dict[str, Any], started_at: pd.Timestamp | None
+) -> LookBack:
     at = facts["happened_at"]
     who = {"ventilator": facts["ventilator_token"]}
     reach = replay.frame(rows.REACH, who).iloc[0]
@@ -221,6 +239,7 @@ def _look_back(replay: Replay, facts: dict[str, Any]) -> LookBack:
             opened_by=f"check {check['check_id']} of this sensor, {word}",
             check_id=str(check["check_id"]),
             hours_h=hours,
+            shown_from=_shown_from(check["checked_at"], started_at),
         )
     first = reach["first_at"]
     if pd.isna(first):
@@ -233,7 +252,21 @@ def _look_back(replay: Replay, facts: dict[str, Any]) -> LookBack:
             " the look-back begins at the ventilator's first record"
         )
     early = at if pd.isna(first) or first > at else first - pd.Timedelta(seconds=1)
-    return LookBack(from_at=early, to_at=at, opened_by=why, check_id=None, hours_h=None)
+    return LookBack(
+        from_at=early,
+        to_at=at,
+        opened_by=why,
+        check_id=None,
+        hours_h=None,
+        shown_from=early,
+    )
+
+
+def _shown_from(from_at: pd.Timestamp, started_at: pd.Timestamp | None) -> pd.Timestamp:
+    """The timeline reaches back a day before the drift, where that began earlier."""
+    if started_at is None:
+        return from_at
+    return min(from_at, started_at - pd.Timedelta(days=1))
 
 
 def _checks(replay: Replay, facts: dict[str, Any]) -> pd.DataFrame:
@@ -286,7 +319,7 @@ def _events(
         rows.EVENTS,
         {
             "ventilator": facts["ventilator_token"],
-            "from": look.from_at - margin - pd.Timedelta(hours=float(WATER_NEAR_H)),
+            "from": look.shown_from - margin - pd.Timedelta(hours=float(WATER_NEAR_H)),
             "to": look.to_at + margin + after,
         },
     )

@@ -81,10 +81,11 @@ ORDER BY started_at, treatment_id
 """
 
 READINGS = """
-SELECT reading_id, filter_id, read_at, resistance_cmh2o_per_lps, doubt
-FROM reading
-WHERE ventilator_token = $ventilator AND read_at > $from AND read_at <= $to
-ORDER BY read_at, reading_id
+SELECT r.reading_id, r.filter_id, r.read_at, r.resistance_cmh2o_per_lps, r.doubt
+FROM reading r LEFT JOIN filter_use u USING (filter_id)
+WHERE coalesce(r.ventilator_token, u.ventilator_token) = $ventilator
+  AND r.read_at > $from AND r.read_at <= $to
+ORDER BY r.read_at, r.reading_id
 """
 
 FILTERS = """

@@ -93,7 +93,7 @@ def drift_of(
     reset = _flags(calibrated, n)
     usable = np.isfinite(t) & np.isfinite(r) & ~_flags(left_out, n) & ~reset
     sd = own_spread(t, r, usable, reset) if spread is None else float(spread)
-    ewma, low, high = (np.full(n, math.nan) for _ in range(3))
+    smooth, low, high = (np.full(n, math.nan) for _ in range(3))
     found: Drift | None = None
     spoke = False
     for era in _eras(t, usable, reset):
@@ -102,14 +102,14 @@ def drift_of(
         spoke = True
         level, level_var = _level(r[era.places], sd)
         average, half = _limits(r[era.places], level, level_var, sd, weight, limit_sd)
-        ewma[era.places] = average
+        smooth[era.places] = ewma(r[era.places], weight, level)
         low[era.places], high[era.places] = level - half, level + half
         signal = _signal(average, half, r[era.places], level, sd, limit_sd)
         if signal is not None:
             found = _described(t, r, era, level, sd, signal)
     counts = {
         "spread": sd,
-        "ewma": ewma,
+        "ewma": smooth,
         "low_limit": low,
         "high_limit": high,
         "used_count": int(usable.sum()),
