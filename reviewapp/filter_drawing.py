@@ -24,10 +24,16 @@ from reviewapp.svg import (
 
 SMALL = (280.0, 168.0)
 LARGE = (1180.0, 360.0)
-_SEGMENT_COLUMNS = (
-    "from_h to_h slope_per_h slope_low slope_high begins_with middle_h"
-    " middle_cmh2o_per_lps"
-).split()
+_SEGMENT_COLUMNS = [
+    "from_h",
+    "to_h",
+    "slope_per_h",
+    "slope_low",
+    "slope_high",
+    "begins_with",
+    "middle_h",
+    "middle_cmh2o_per_lps",
+]
 # The state is told by a mark before its word: filled where it is to be looked at.
 STATE_MARKS = {
     "over_limit": "■",
@@ -286,7 +292,6 @@ def _forecast(
             )
         ]
     name = f"f-{_safe(str(row['filter_id']))}"
-    horizon = last + span
     hours = [last + span * k / 24 for k in range(25)]
 
     def course(slope: float) -> list[tuple[float, float]]:
