@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from typing import Any
 
 import pandas as pd
@@ -273,14 +273,17 @@ def _ratio(
         return top + 84 - (value - low) / (high - low) * 76
 
     band = known.dropna(subset=["low"])
-    upper = [(x(r.checked_at), y(r.high)) for r in band.itertuples()]
-    lower = [(x(r.checked_at), y(r.low)) for r in band.itertuples()]
+    places = [x(at) for at in band["checked_at"]]
+
+    def course(column: str) -> list[tuple[float, float]]:
+        return [(at, y(float(v))) for at, v in zip(places, band[column], strict=True)]
+
+    upper, lower = course("high"), course("low")
     if len(upper) > 1:
         parts.append(
             path([*upper, *lower[::-1]], "none", fill=colours["lost"], opacity=0.35)
         )
-    smooth = [(x(r.checked_at), y(r.ewma)) for r in band.itertuples()]
-    parts.append(path(smooth, colours["aerosol"], 1.8))
+    parts.append(path(course("ewma"), colours["aerosol"], 1.8))
     for row in known.to_dict("records"):
         words = f"{row['check_id']}: {row['ratio']:.3f}"
         parts.append(
@@ -394,7 +397,7 @@ def _round_ticks(high: float) -> list[float]:
     return [k * step for k in range(int(high / step) + 1)]
 
 
-def _row_words(row: dict[str, Any]) -> str:
+def _row_words(row: Mapping[Any, Any]) -> str:
     amount = millilitres(row["sensor_ml"], row["sensor_low_ml"], row["sensor_high_ml"])
     return (
         f"{row['ventilator_token']}: {amount}, {row['treatments_count']} treatments,"

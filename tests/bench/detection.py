@@ -1,0 +1,302 @@
+"""How often the flags on filters, sensors and faults are right, on made departments.
+
+Run   python tests/bench/detection.py [departments]
+Writes engine/evidence/detection.csv, which the Evidence screen prints as it stands.
+
+The departments are made here, by rules of our own that know nothing of the methods:
+filters that keep their level, that load straight or ever faster, that cross the limit,
+that are changed without an entry; sensors that keep their level or drift; faults with
+a cause that leaves a record or none. Seeds are the department numbers, from 0.
+"""
+
+from __future__ import annotations
+
+import csv
+import sys
+from collections import Counter
+from pathlib import Path
+
+import numpy as np
+from scipy.stats import beta
+
+from engine.policy import load_policy
+from engine.stats.drift import drift_of
+from engine.stats.filter_life import life_of
+
+OUT = Path(__file__).parents[2] / "engine" / "evidence" / "detection.csv"
+FLAGGED = {"rising", "near_limit", "over_limit"}
+FILTERS_EACH = 4  # of every sort, in each department
+DAY_H = 24.0
+
+
+def main(departments: int = 500) -> None:
+    tally: Counter[str] = Counter()
+    for seed in range(departments):
+        rng = np.random.default_rng(seed)
+        filters(rng, tally, seed)
+        sensors(rng, tally)
+    rows = [row(tally, departments, *asked) for asked in ASKED]
+    write(rows)
+    for line in rows:
+        print(
+            f"{line['question']:<66} {line['right_count']:>6} / {line['of_count']:<6}"
+            f" {line['share']:>6} ({line['low']} to {line['high']})"
+            f"  {line['target'] or '-':<14} {line['met']}"
+        )
+
+
+def filters(rng: np.random.Generator, tally: Counter[str], seed: int) -> None:
+    limits = load_policy().filters
+
+    def life(hours, resistance):
+        return life_of(
+            hours,
+            resistance,
+            limits.limit_cmh2o_per_lps,
+            limits.near_limit_frac,
+            limits.readings_for_a_trend_count,
+            limits.rising_p,
+            limits.unlogged_change_p,
+            seed,
+        )
+
+    for _ in range(FILTERS_EACH):
+        new, scatter = rng.uniform(2.0, 2.5), rng.choice([0.05, 0.08, 0.15])
+        steady = read(
+            rng, lambda t, new=new: new + 0 * t, rng.uniform(72, 200), scatter
+        )
+        if len(steady[0]) >= 8:
+            done = life(*steady)
+            tally["steady"] += 1
+            tally["steady flagged"] += done.state in FLAGGED
+            tally["level unchanged"] += 1
+            tally["level called changed"] += done.suspected_change_h is not None
+        crossing(rng, tally, life, new, scatter, limits.limit_cmh2o_per_lps)
+        loading(rng, tally, life, new, scatter)
+
+
+def crossing(rng, tally, life, new, scatter, limit) -> None:
+    """A filter that will cross the limit, read until just before it does."""
+    at = rng.uniform(30, 160)
+    shape = rng.choice(["straight", "speeding", "late"])
+    course = {
+        "straight": lambda t: new + (limit - new) * t / at,
+        "speeding": lambda t: new * (limit / new) ** (t / at),
+        "late": lambda t: new + (limit - new) * np.maximum(0, 2 * t / at - 1),
+    }[shape]
+    hours, resistance = read(rng, course, at, scatter)
+    flagged = len(hours) > 0 and life(hours, resistance).state in FLAGGED
+    tally[f"crossing {shape}"] += 1
+    tally[f"crossing {shape} flagged"] += flagged
+    tally["crossing"] += 1
+    tally["crossing flagged"] += flagged
+    if len(hours) >= 8:
+        tally["crossing 8"] += 1
+        tally["crossing 8 flagged"] += flagged
+
+
+def loading(rng, tally, life, new, scatter) -> None:
+    """Filters that load below the limit, unchanged and changed without an entry."""
+    per_h = rng.uniform(0.1, 0.6) / DAY_H
+    span = rng.uniform(72, 160)
+    for name, course in (
+        ("straight", lambda t: new + per_h * t),
+        ("speeding", lambda t: new + per_h * t * t / 100),
+    ):
+        hours, resistance = read(rng, course, span, scatter)
+        if len(hours) >= 8:
+            found = life(hours, resistance).suspected_change_h
+            tally[f"{name} unchanged"] += 1
+            tally[f"{name} called changed"] += found is not None
+    at = rng.uniform(48, 110)
+    hours, resistance = read(
+        rng,
+        lambda t: new + per_h * np.where(t > at, t - at, t),
+        at + rng.uniform(24, 72),
+        scatter,
+    )
+    if len(hours) >= 8 and (hours > at).sum() >= 2:
+        found = life(hours, resistance).suspected_change_h
+        drop = "large" if per_h * at >= 1.0 else "small"
+        tally[f"changed {drop}"] += 1
+        tally[f"changed {drop} found"] += found is not None
+        if found is not None:
+            first_after = hours[hours > at][0]
+            tally["changed located of"] += 1
+            place = np.searchsorted(hours, found) - np.searchsorted(hours, first_after)
+            tally["changed located"] += abs(place) <= 1
+
+
+def read(rng, course, span_h, scatter) -> tuple[np.ndarray, np.ndarray]:
+    """Readings every shift or so, a fifth missed, to one decimal as people write."""
+    planned = np.arange(rng.uniform(0, 8), span_h, 8.0)
+    hours = np.sort(planned + rng.normal(0, 1, len(planned)))
+    hours = hours[(rng.random(len(hours)) > 0.2) & (hours > 0) & (hours < span_h)]
+    noisy = course(hours) + rng.normal(0, scatter, len(hours))
+    return hours, np.round(noisy, 1)
+
+
+def sensors(rng: np.random.Generator, tally: Counter[str]) -> None:
+    """Four ventilators: level, drifting, level with a calibration, wild checks."""
+    rules = load_policy().sensors
+    every = rng.choice([12.0, 24.0, 48.0, 72.0])
+    for kind in ("level", "drifting", "calibrated", "wild"):
+        hours = np.arange(0, 150 * DAY_H, every)
+        hours = hours + rng.uniform(0, every / 4, len(hours))
+        scatter = rng.uniform(0.01, 0.02)
+        ratio = 1 + rng.normal(0, 0.03) + rng.normal(0, scatter, len(hours))
+        start = rng.uniform(60, 120) * DAY_H
+        calibrated = np.zeros(len(hours), bool)
+        if kind == "drifting":
+            span = rng.uniform(14, 28) * DAY_H
+            ratio -= 0.15 * np.clip((hours - start) / span, 0, 1)
+            kept = hours <= start + span
+            hours, ratio, calibrated = hours[kept], ratio[kept], calibrated[kept]
+        if kind == "calibrated":
+            calibrated[np.searchsorted(hours, start)] = True
+            ratio[hours > start] += rng.normal(0, 0.05)
+        if kind == "wild":
+            ratio[rng.random(len(hours)) < 0.01] -= 0.12
+        done = drift_of(
+            hours,
+            ratio,
+            rules.drift_weight,
+            rules.drift_limit_sd,
+            calibrated=calibrated,
+        )
+        if kind == "drifting":
+            tally["drifting"] += 1
+            tally["drifting found"] += bool(done.drifting)
+            if done.drifting:
+                tally["drift start of"] += 1
+                away = abs(done.started_h - start) / DAY_H
+                tally["drift start within"] += away <= 3
+                inside = done.started_low_h <= start <= done.started_high_h
+                tally["drift start inside"] += inside
+        else:
+            tally["no drift"] += 1
+            tally["no drift called"] += bool(done.drifting)
+
+
+# question, right, of, target, how the target is met
+ASKED: tuple[tuple[str, str, str, str], ...] = (
+    (
+        "crossing filters flagged before they cross, 8 readings or more",
+        "crossing 8 flagged",
+        "crossing 8",
+        ">= 0.95",
+    ),
+    (
+        "crossing filters flagged before they cross, all",
+        "crossing flagged",
+        "crossing",
+        ">= 0.95",
+    ),
+    (
+        "  of these, rising straight",
+        "crossing straight flagged",
+        "crossing straight",
+        "",
+    ),
+    ("  of these, ever faster", "crossing speeding flagged", "crossing speeding", ""),
+    ("  of these, only late", "crossing late flagged", "crossing late", ""),
+    (
+        "steady filters flagged falsely, 8 readings or more",
+        "steady flagged",
+        "steady",
+        "<= 0.05",
+    ),
+    (
+        "unchanged level filters called changed (asked for .05)",
+        "level called changed",
+        "level unchanged",
+        "0.03 to 0.07",
+    ),
+    (
+        "unchanged filters loading straight called changed (asked for .05)",
+        "straight called changed",
+        "straight unchanged",
+        "0.03 to 0.07",
+    ),
+    (
+        "unchanged filters loading ever faster called changed (asked for .05)",
+        "speeding called changed",
+        "speeding unchanged",
+        "0.03 to 0.07",
+    ),
+    (
+        "unlogged changes found, drop of 1 cmH2O/(L/s) or more",
+        "changed large found",
+        "changed large",
+        "",
+    ),
+    (
+        "unlogged changes found, smaller drop",
+        "changed small found",
+        "changed small",
+        "",
+    ),
+    ("  found within one reading", "changed located", "changed located of", ""),
+    ("drifting sensors found", "drifting found", "drifting", ""),
+    (
+        "start of the drift within 3 days",
+        "drift start within",
+        "drift start of",
+        ">= 0.80",
+    ),
+    (
+        "start of the drift inside its interval",
+        "drift start inside",
+        "drift start of",
+        "",
+    ),
+    ("level sensors called drifting, 150 days", "no drift called", "no drift", ""),
+)
+
+
+def row(
+    tally: Counter[str],
+    departments: int,
+    question: str,
+    right: str,
+    of: str,
+    target: str,
+) -> dict[str, object]:
+    n, k = tally[of], tally[right]
+    share = k / n if n else float("nan")
+    low = float(beta.ppf(0.025, k, n - k + 1)) if k else 0.0
+    high = float(beta.ppf(0.975, k + 1, n - k)) if k < n else 1.0
+    return {
+        "question": question,
+        "departments": departments,
+        "seeds": f"0 to {departments - 1}",
+        "right_count": k,
+        "of_count": n,
+        "share": f"{share:.3f}",
+        "low": f"{low:.3f}",
+        "high": f"{high:.3f}",
+        "target": target,
+        "met": met(share, target),
+    }
+
+
+def met(share: float, target: str) -> str:
+    if not target:
+        return ""
+    if target.startswith(">="):
+        return "yes" if share >= float(target[2:]) else "no"
+    if target.startswith("<="):
+        return "yes" if share <= float(target[2:]) else "no"
+    low, high = map(float, target.split(" to "))
+    return "yes" if low <= share <= high else "no"
+
+
+def write(rows: list[dict[str, object]]) -> None:
+    with OUT.open("w", newline="", encoding="utf-8") as file:
+        writer = csv.DictWriter(file, list(rows[0]), lineterminator="\n")
+        writer.writeheader()
+        writer.writerows(rows)
+
+
+if __name__ == "__main__":
+    main(*map(int, sys.argv[1:2]))
