@@ -142,10 +142,11 @@ def sentence_of(
     clock: Clock,
 ) -> str:
     """The first lines of the screen and the report."""
-    name = f"{facts['incident_id']}: " if facts["incident_id"] else ""
+    known = facts["incident_id"]
+    name = f"{known}: ventilator" if known else "Ventilator"
     sensor = str(facts["sensor"]).replace("_", " ")
     opening = (
-        f"{name}ventilator {facts['ventilator_token']}, {sensor} sensor,"
+        f"{name} {facts['ventilator_token']}, {sensor} sensor,"
         f" {local(facts['happened_at'], zone)}."
     )
     parts = [
