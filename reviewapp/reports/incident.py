@@ -1,0 +1,237 @@
+"""The incident on paper: one self-contained page a reviewer can print and sign."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from html import escape
+from typing import Any
+
+import pandas as pd
+
+from engine.reviews.explanations import Explanation
+from engine.reviews.incident import Incident
+from engine.reviews.incident_scenario import OtherHistory
+from engine.reviews.incident_words import local, millilitres
+from reviewapp.incident_drawing import burden_svg, timeline_svg
+from reviewapp.svg import LIGHT
+
+GRADE_MARKS = {"supported": "●", "consistent": "◐", "no record": "?", "against": "○"}
+CITED_ROWS = 600  # of the timeline; the count of those left out is printed
+
+
+def incident_sections(
+    incident: Incident, limit: float, other: OtherHistory | None = None
+) -> list[tuple[str, str]]:
+    """Heading and HTML of each section, in the order they are read."""
+    return [
+        ("What happened", _facts(incident)),
+        ("On one timeline", _timeline(incident, limit)),
+        ("Aerosol to the sensor since the last passed check", _burden(incident, other)),
+        ("What could explain it", _explanations(incident.explanations)),
+        ("The same exposure elsewhere", _elsewhere(incident)),
+        ("What the records do not support", _list(incident.not_supported)),
+        ("Harm and actions", _actions(incident)),
+        ("Rows cited", _cited(incident)),
+    ]
+
+
+def table(
+    heads: Sequence[str], rows: Sequence[Sequence[Any]], figures: str = ""
+) -> str:
+    """A table; ``figures`` has an ``r`` for each column set to the right."""
+    aligned = [
+        ' style="text-align:right;font-variant-numeric:tabular-nums"'
+        if f == "r"
+        else ""
+        for f in figures.ljust(len(heads))
+    ]
+    head = "".join(
+        f'<th scope="col"{a}>{escape(str(h))}</th>'
+        for h, a in zip(heads, aligned, strict=True)
+    )
+    body = "".join(
+        "<tr>"
+        + "".join(f"<td{a}>{_cell(v)}</td>" for v, a in zip(row, aligned, strict=True))
+        + "</tr>"
+        for row in rows
+    )
+    return f"<table><thead><tr>{head}</tr></thead><tbody>{body}</tbody></table>"
+
+
+def _cell(value: Any) -> str:
+    if value is None or (not isinstance(value, list | tuple) and pd.isna(value)):
+        return "unknown"
+    return escape(str(value))
+
+
+def _p(words: str) -> str:
+    return f"<p>{escape(words)}</p>"
+
+
+def _list(lines: Sequence[str]) -> str:
+    return "<ul>" + "".join(f"<li>{escape(line)}</li>" for line in lines) + "</ul>"
+
+
+def _facts(incident: Incident) -> str:
+    facts, look = incident.facts, incident.look_back
+    rows = [
+        ("Incident", facts["incident_id"] or "entered by hand"),
+        ("Ventilator", facts["ventilator_token"]),
+        ("Sensor", str(facts["sensor"]).replace("_", " ")),
+        ("Happened (site time)", local(facts["happened_at"], incident.site_zone)),
+        ("Harm as logged", facts["harm"]),
+        ("Note", facts["note"] or "none"),
+        ("Looked back to", local(look.from_at, incident.site_zone)),
+        ("because", look.opened_by),
+        ("Clock", incident.clock.sentence),
+    ]
+    return _p(incident.sentence) + table(("", ""), rows)
+
+
+def _timeline(incident: Incident, limit: float) -> str:
+    key = (
+        "Filled square: no filter, failed check, alarm or fault. Hollow circle: filter"
+        " present, check passed. Hatched with a question mark: not recorded. Cross:"
+        " reading not used. Diamond: sensor recalibrated or replaced. A dotted thread"
+        " leads from the ventilator's own clock to the site's."
+    )
+    return timeline_svg(incident, LIGHT, limit) + f"<p><small>{key}</small></p>"
+
+
+def _burden(incident: Incident, other: OtherHistory | None) -> str:
+    burden = incident.burden
+    amount = millilitres(burden.sensor_ml, burden.sensor_low_ml, burden.sensor_high_ml)
+    rows = [
+        ("Treatments", burden.treatments_count),
+        ("Filter present", burden.present_count),
+        ("Filter absent", burden.absent_count),
+        ("Filter unknown", burden.unknown_count),
+        ("Without an estimate", burden.not_estimated_count),
+        ("Nebulised liquid on to the sensor, estimate and band", amount),
+        ("Place among ventilators", f"{burden.place or 'none'} of {burden.of}"),
+    ]
+    body = table(("", ""), rows, " r") + burden_svg(burden, LIGHT)
+    if other is not None:
+        body += _p(other.sentence)
+    return body
+
+
+def _explanations(explanations: Sequence[Explanation]) -> str:
+    parts = []
+    for explanation in explanations:
+        mark = GRADE_MARKS[explanation.grade]
+        conditions = "".join(
+            f"<li>{escape(_said(c.holds))} ({c.role}): {escape(c.text)}"
+            f"{_behind(c.rows)}</li>"
+            for c in explanation.conditions
+        )
+        parts.append(
+            f"<h3>{mark} {escape(explanation.title)}:"
+            f" <em>{escape(explanation.grade)}</em></h3>"
+            f"{_p(explanation.sentence)}<ul>{conditions}</ul>"
+            f"<p><b>Would be refuted by.</b> {escape(explanation.refuted_by)}"
+            f" <b>Would be settled by.</b> {escape(explanation.settled_by)}</p>"
+        )
+    return "".join(parts)
+
+
+def _said(holds: bool | None) -> str:
+    return {True: "yes", False: "no", None: "not on record"}[holds]
+
+
+def _behind(rows: Sequence[tuple[str, str]]) -> str:
+    if not rows:
+        return ""
+    shown = ", ".join(escape(row) for _, row in rows[:12])
+    rest = f" and {len(rows) - 12} more" if len(rows) > 12 else ""
+    return f" <small>[{escape(rows[0][0].replace('_', ' '))}: {shown}{rest}]</small>"
+
+
+def _elsewhere(incident: Incident) -> str:
+    exposed = incident.exposed_ventilators
+    parts = [_p(incident.windows.sentence)]
+    if incident.pairs.sets_used:
+        pairs = incident.pairs
+        parts.append(
+            _p(
+                f"Over {incident.faults_count} faults, {pairs.sets_used} differ from"
+                f" their own earlier window: exact odds ratio {pairs.ratio:.1f}"
+                f" ({pairs.low:.1f} to {pairs.high:.1f}), p {pairs.p:.3f}; the smallest"
+                f" p so many could give is {pairs.smallest_p:.3f}. A high ratio is a"
+                " reason to inspect, not a cause."
+            )
+        )
+    if exposed.empty:
+        parts.append(_p("No other ventilator has as many unfiltered treatments."))
+    else:
+        heads = ("Ventilator", "Treatments", "No filter", "Unknown", "mL to sensor")
+        rows = [
+            (
+                row["ventilator_token"],
+                row["treatments_count"],
+                row["absent_count"],
+                row["unknown_count"],
+                f"{row['sensor_ml']:.1f}",
+            )
+            for row in exposed.to_dict("records")
+        ]
+        parts.append(table(heads, rows, " rrrr"))
+    if not incident.patients.empty:
+        heads = ("Patient token", "Treatments", "No filter", "Unknown")
+        names = ("patient_token", "treatments_count", "absent_count", "unknown_count")
+        rows = [
+            tuple(row[name] for name in names)
+            for row in incident.patients.to_dict("records")
+        ]
+        parts.append(_p("Patients on this ventilator in the look-back:"))
+        parts.append(table(heads, rows, " rrr"))
+    return "".join(parts)
+
+
+def _actions(incident: Incident) -> str:
+    parts = [_p(incident.harm_sentence)]
+    if not incident.harm.empty:
+        rows = [
+            (row["role"], row["harm"], row["reason"] or "")
+            for row in incident.harm.to_dict("records")
+        ]
+        parts.append(table(("Rater's role", "Harm", "Reason"), rows))
+    if incident.actions.empty:
+        parts.append(_p("No action has been decided yet."))
+    else:
+        names = ("text", "strength", "owner_role", "measure", "due")
+        rows = [
+            tuple(row[name] for name in names)
+            for row in incident.actions.to_dict("records")
+        ]
+        heads = ("Decided", "Strength", "Owner (role)", "Measured by", "Due")
+        parts.append(table(heads, rows))
+    names = ("strength", "text", "measure", "because")
+    rows = [
+        tuple(row[name] for name in names)
+        for row in incident.suggested_actions.to_dict("records")
+    ]
+    parts.append(_p("To choose from, the strongest first; none of it is decided here:"))
+    parts.append(table(("Strength", "Action", "Measured by", "Because of"), rows))
+    return "".join(parts)
+
+
+def _cited(incident: Incident) -> str:
+    shown = incident.timeline.tail(CITED_ROWS)
+    zone = incident.site_zone
+    rows = [
+        (
+            local(row["at"], zone),
+            row["lane"],
+            row["text"],
+            f"{row['table']} {row['row_id']}".strip(),
+            ""
+            if pd.isna(row["offset_s"])
+            else f"{local(row['at_logged'], zone)} by its own clock",
+        )
+        for row in shown.to_dict("records")
+    ]
+    left_out = len(incident.timeline) - len(shown)
+    more = f" The earliest {left_out} rows are not printed." if left_out else ""
+    opening = _p(f"Every row on the timeline, site time.{more}")
+    return opening + table(("When", "Lane", "What", "Row", "As logged"), rows)
