@@ -32,7 +32,7 @@ LANES = (
     ("resistance", 62.0),
     ("volume ratio", 92.0),
     ("checks", 34.0),
-    ("events", 44.0),
+    ("events", 46.0),
 )
 HATCH = "unsaid"
 
@@ -342,31 +342,26 @@ def _events(
     """Events on the site's clock; a thread leads from where the ventilator put them."""
     events = incident.events
     events = events[(events["at"] >= start) & (events["at"] <= end)]
-    parts, free = [], {14.0: -math.inf, 30.0: -math.inf}
+    parts: list[str] = []
+    free = {12.0: -math.inf, 38.0: -math.inf}  # where the last label of a row ends
     for row in events.to_dict("records"):
-        at, y = x(row["at"]), top + 20
+        at, y = x(row["at"]), top + 22
         logged = x(row["happened_at"])
         words = f"{row['event_id']}: {row['kind']} {row['code'] or ''}"
         if abs(logged - at) > 2:
-            parts.append(line(logged, y + 8, at, y, colours["unknown"], 1))
-            parts.append(
-                line(logged, y + 4, logged, y + 12, colours["unknown"], 1, "1 2")
-            )
+            grey = colours["unknown"]
+            parts.append(line(logged, y + 8, at, y, grey, 1))
+            parts.append(line(logged, y + 4, logged, y + 12, grey, 1, "1 2"))
         urgent = row["kind"] in {"alarm", "fault"}
-        parts.append(
-            to_look_at(at, y, colours, words, 3.5)
-            if urgent
-            else in_order(at, y, colours, words, 3.5)
-        )
+        mark = to_look_at if urgent else in_order
+        parts.append(mark(at, y, colours, words, 3.5))
         label = str(row["kind"] or "event").replace("_", " ")
-        for height, end_x in free.items():
-            if at > end_x + 4:
-                late = at > WIDTH - RIGHT - 60
-                place, anchor = (at - 6, "end") if late else (at + 6, "start")
-                parts.append(
-                    text(place, top + height, label, colours["ink"], 10, anchor)
-                )
-                free[height] = at + 8 + 5.4 * len(label)
+        wide = 5.6 * len(label)
+        left = min(at - wide / 2, WIDTH - RIGHT - wide)
+        for height, taken in free.items():
+            if left > taken + 6:
+                parts.append(text(left, top + height, label, colours["ink"], 10))
+                free[height] = left + wide
                 break
     return parts
 

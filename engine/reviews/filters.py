@@ -28,6 +28,9 @@ STATE_WORDS = {
     "too_few_readings": "too few readings",
     "steady": "steady",
 }
+RISING_STATES = ("rising", "near_limit", "over_limit")
+ONLY_AEROSOL = "no humid hours on it: nothing else on record to set against the aerosol"
+ONLY_WATER = "no catch on it: nothing else on record to set against the humid hours"
 SHOWN_FILTERS = 2000  # rows of the table; the most urgent come first
 DRAWN_FILTERS = 24  # small multiples whose readings leave the engine
 
@@ -204,8 +207,10 @@ def _with_shares(
     n = lives["treatments_count"].clip(lower=1)
     blurred_dose = lives["captured_unknown_count"] / n > most
     blurred_water = lives["humid_unknown_count"] / n > most
+    rises = lives["state"].isin(RISING_STATES)
     reasons = np.select(
         [
+            ~rises,
             np.full(len(lives), bool(loading.refusal)),
             lives["treatments_count"] == 0,
             blurred_dose,
@@ -214,6 +219,7 @@ def _with_shares(
             lives["verdict"] == CANNOT_TELL,
         ],
         [
+            "it is not shown to rise",
             loading.refusal,
             "no treatment is recorded on this filter",
             "too many of its treatments lack what is needed to estimate the catch",
@@ -226,8 +232,14 @@ def _with_shares(
     hidden = reasons != ""
     lives["verdict_reason"] = reasons
     lives.loc[hidden, "verdict"] = CANNOT_TELL
-    blurred = blurred_dose | blurred_water
-    lives.loc[blurred, ["share", "share_low", "share_high"]] = math.nan
+    silent = blurred_dose | blurred_water | ~rises
+    lives.loc[silent, ["share", "share_low", "share_high"]] = math.nan
+    gathered_of = gathered.groupby("filter_id")[["captured_ml", "humid_h"]].max()
+    humid = lives["filter_id"].map(gathered_of["humid_h"]).fillna(0.0)
+    caught = lives["filter_id"].map(gathered_of["captured_ml"]).fillna(0.0)
+    told = lives["verdict"] != CANNOT_TELL
+    lives.loc[told & (humid <= 0), "verdict_reason"] = ONLY_AEROSOL
+    lives.loc[told & (caught <= 0), "verdict_reason"] = ONLY_WATER
     return lives
 
 
@@ -379,7 +391,7 @@ def _sentence(lives: pd.DataFrame, limit: float) -> str:
 
 
 def _pointing(lives: pd.DataFrame) -> str:
-    rising = lives[lives["state"].isin(["rising", "near_limit", "over_limit"])]
+    rising = lives[lives["state"].isin(RISING_STATES)]
     if rising.empty:
         return ""
     verdicts = rising["verdict"].value_counts()

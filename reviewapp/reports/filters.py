@@ -87,6 +87,8 @@ def share(row: Any) -> str:
     """The share that points to aerosol with its ends, or that it cannot be told."""
     if row["share"] is None or pd.isna(row["share"]):
         return "cannot tell"
+    if row["share_low"] == row["share_high"]:
+        return f"{row['share']:.0%}, only that on record"
     ends = f"({row['share_low']:.0%} to {row['share_high']:.0%})"
     told = "" if row["verdict"] != "cannot_tell" else ", cannot tell"
     return f"{row['share']:.0%} {ends}{told}"

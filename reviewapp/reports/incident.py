@@ -16,6 +16,12 @@ from reviewapp.incident_drawing import burden_svg, timeline_svg
 from reviewapp.svg import LIGHT
 
 GRADE_MARKS = {"supported": "●", "consistent": "◐", "no record": "?", "against": "○"}
+ROLES = {
+    "needed": "needed",
+    "against": "would speak against it",
+    "also": "adds weight",
+    "examination": "examination",
+}
 CITED_ROWS = 600  # of the timeline; the count of those left out is printed
 
 
@@ -120,15 +126,17 @@ def _explanations(explanations: Sequence[Explanation]) -> str:
     parts = []
     for explanation in explanations:
         mark = GRADE_MARKS[explanation.grade]
-        conditions = "".join(
-            f"<li>{escape(_said(c.holds))} ({c.role}): {escape(c.text)}"
-            f"{_behind(c.rows)}</li>"
-            for c in explanation.conditions
+        asked = table(
+            ("What the records were asked", "Role", "Answer", "Rows"),
+            [
+                (c.text, ROLES[c.role], _said(c.holds), _behind(c.rows))
+                for c in explanation.conditions
+            ],
         )
         parts.append(
             f"<h3>{mark} {escape(explanation.title)}:"
             f" <em>{escape(explanation.grade)}</em></h3>"
-            f"{_p(explanation.sentence)}<ul>{conditions}</ul>"
+            f"{_p(explanation.sentence)}{asked}"
             f"<p><b>Would be refuted by.</b> {escape(explanation.refuted_by)}"
             f" <b>Would be settled by.</b> {escape(explanation.settled_by)}</p>"
         )
@@ -141,10 +149,10 @@ def _said(holds: bool | None) -> str:
 
 def _behind(rows: Sequence[tuple[str, str]]) -> str:
     if not rows:
-        return ""
-    shown = ", ".join(escape(row) for _, row in rows[:12])
-    rest = f" and {len(rows) - 12} more" if len(rows) > 12 else ""
-    return f" <small>[{escape(rows[0][0].replace('_', ' '))}: {shown}{rest}]</small>"
+        return "–"
+    shown = ", ".join(row for _, row in rows[:8])
+    rest = f" and {len(rows) - 8} more" if len(rows) > 8 else ""
+    return f"{rows[0][0].replace('_', ' ')} {shown}{rest}"
 
 
 def _elsewhere(incident: Incident) -> str:
