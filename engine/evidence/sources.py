@@ -123,3 +123,100 @@ FARRINGTON_1995 = Source(
     journal="Biometrics 51:228",
     known="from memory",
 )
+CUCCIA_2020 = Source(
+    key="CUCCIA_2020",
+    authors="Cuccia AD, Ashraf S, McPeck M, Samuel J, Smaldone GC",
+    year=2020,
+    title="Wet-side breath-enhanced jet nebulization",
+    journal="Respiratory Care 65(8):1077",
+    address="rc.rcjournal.com/content/65/8/1077",
+)
+DUBUS_2005 = Source(
+    key="DUBUS_2005",
+    authors="Dubus JC, Vecellio L, De Monte M and others",
+    year=2005,
+    title="Aerosol deposition in neonatal ventilation",
+    journal="Pediatric Research 58(1):10",
+    address="abstract in a public copy of the first page",
+)
+LELLOUCHE_2024 = Source(
+    key="LELLOUCHE_2024",
+    authors="Lellouche F and others",
+    year=2024,
+    title="Gas humidity after a heated humidifier is switched off",
+    journal="Respiratory Care 69(10):1239",
+)
+CHEST_1987 = Source(
+    key="CHEST_1987",
+    authors="not shown in the part read",
+    year=1987,
+    title="Output and droplet size of jet and ultrasonic nebulizers",
+    journal="Chest 92:991",
+)
+ALLEN_RAABE_1985 = Source(
+    key="ALLEN_RAABE_1985",
+    authors="Allen MD, Raabe OG",
+    year=1985,
+    title="Slip correction measurements of spherical solid aerosol particles",
+    journal="Aerosol Science and Technology 4:269",
+    known="from memory",
+)
+ARI_2010A = Source(
+    key="ARI_2010A",
+    authors="Ari A, Areabi H, Fink JB",
+    year=2010,
+    title="Aerosol generators at 3 locations, humidified and dry adult circuits",
+    journal="Respiratory Care 55(7):837",
+    address="pubmed 20587094",
+)
+ARI_2012 = Source(
+    key="ARI_2012",
+    authors="Ari A, Harwood R, Sheard M, Fink JB",
+    year=2012,
+    title="Aerosol through tracheostomy and endotracheal tubes",
+    journal="Respiratory Care 57(7):1066",
+)
+ARI_2016 = Source(
+    key="ARI_2016",
+    authors="Ari A, Fink JB, Pilbeam SP",
+    year=2016,
+    title="Dose at the ventilator outlet with and without expiratory filters",
+    journal="Indian Journal of Respiratory Care 5(1):677",
+)
+WILKES_2002 = Source(
+    key="WILKES_2002",
+    authors="Wilkes AR (author and year from memory)",
+    year=2002,
+    title="Penetration of sodium chloride particles through 33 breathing filters",
+    journal="Anaesthesia",
+)
+WILKES_2004 = Source(
+    key="WILKES_2004",
+    authors="not shown in the part read",
+    year=2004,
+    title="Flow and penetration of breathing-system filters",
+    journal="Anaesthesia 59:278",
+    address="pubmed 14984527",
+)
+PUI_1987 = Source(
+    key="PUI_1987",
+    authors="Pui DYH, Romay-Novas F, Liu BYH",
+    year=1987,
+    title="Experimental study of particle deposition in bends of circular tubes",
+    journal="Aerosol Science and Technology 7:301",
+)
+LIU_AGARWAL_1974 = Source(
+    key="LIU_AGARWAL_1974",
+    authors="Liu BYH, Agarwal JK",
+    year=1974,
+    title="Experimental observation of aerosol deposition in turbulent flow",
+    journal="Journal of Aerosol Science 5:145",
+)
+FRIEDLANDER_1957 = Source(
+    key="FRIEDLANDER_1957",
+    authors="Friedlander SK, Johnstone HF",
+    year=1957,
+    title="Deposition of suspended particles from turbulent gas streams",
+    journal="Industrial and Engineering Chemistry 49:1151",
+    known="from memory",
+)
