@@ -220,3 +220,71 @@ FRIEDLANDER_1957 = Source(
     journal="Industrial and Engineering Chemistry 49:1151",
     known="from memory",
 )
+ALDUCHOV_1996 = Source(
+    key="ALDUCHOV_1996",
+    authors="Alduchov OA, Eskridge RE",
+    year=1996,
+    title="Improved Magnus form approximation of saturation vapor pressure",
+    journal="Journal of Applied Meteorology 35:601",
+    known="from memory",
+)
+CODATA = Source(
+    key="CODATA",
+    authors="CODATA and standard tables",
+    year=2018,
+    title="Physical constants and molar masses",
+    known="from memory",
+)
+DAVIES_1945 = Source(
+    key="DAVIES_1945",
+    authors="Davies CN",
+    year=1945,
+    title="Definitive equations for the fluid resistance of spheres",
+    journal="Proceedings of the Physical Society 57:259",
+)
+HINDS_1999 = Source(
+    key="HINDS_1999",
+    authors="Hinds WC",
+    year=1999,
+    title="Aerosol Technology, second edition",
+    journal="Wiley",
+    known="from memory",
+)
+HUTCHINS_1995 = Source(
+    key="HUTCHINS_1995",
+    authors="Hutchins DK, Harper MH, Felder RL",
+    year=1995,
+    title="Slip correction measurements for solid spherical particles",
+    journal="Aerosol Science and Technology 22:202",
+)
+ICRP_66 = Source(
+    key="ICRP_66",
+    authors="International Commission on Radiological Protection",
+    year=1994,
+    title="Human respiratory tract model, Publication 66",
+    journal="Annals of the ICRP 24(1-3)",
+    address="coefficients in the public KDEP source",
+)
+KIM_2005 = Source(
+    key="KIM_2005",
+    authors="Kim JH, Mulholland GW, Kukuck SR, Pui DYH",
+    year=2005,
+    title="Slip correction measurements of certified PSL nanoparticles",
+    journal="Journal of Research of NIST 110:31",
+)
+PITZER_1973 = Source(
+    key="PITZER_1973",
+    authors="Pitzer KS, Mayorga G",
+    year=1973,
+    title="Thermodynamics of electrolytes II",
+    journal="Journal of Physical Chemistry 77:2300",
+    known="from memory",
+)
+BLASIUS_1913 = Source(
+    key="BLASIUS_1913",
+    authors="Blasius H",
+    year=1913,
+    title="Law of similarity for friction in fluids",
+    journal="VDI Mitteilungen 131",
+    known="from memory",
+)

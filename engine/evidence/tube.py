@@ -3,6 +3,7 @@
 from engine.evidence.shape import Number
 from engine.evidence.sources import (
     ARI_2012,
+    BLASIUS_1913,
     COMMON_PRACTICE,
     FRIEDLANDER_1957,
     LIU_AGARWAL_1974,
@@ -114,10 +115,10 @@ TURBULENT_ABOVE_RE = Number(
 # --- straight walls --------------------------------------------------------------
 
 FRICTION_COEF = Number(
-    value=(5.03, 0.125),
+    value=(0.316, 0.25),
     unit="coef",
-    source=FRIEDLANDER_1957,
-    where="friction velocity from mean velocity: Blasius in a smooth tube",
+    source=BLASIUS_1913,
+    where="friction factor of a smooth tube: scale, power of the Reynolds number",
     known="from memory",
 )
 LIU_AGARWAL_COEF = Number(
