@@ -16,6 +16,7 @@ import pandas as pd
 import pyarrow as pa
 
 from engine.columns import code_of
+from engine.physics.balance import balance
 from engine.replay.batches import batch_of
 from engine.reviews.wording import counted
 
@@ -53,8 +54,6 @@ def other_history(replay: Replay, incident: Incident) -> OtherHistory:
     A treatment whose estimate was refused stays without one in both histories and is
     counted, so that the two are like for like.
     """
-    from engine.physics.balance import balance
-
     cursor = replay.log.cursor()
     look = incident.look_back
     asked = {
@@ -146,7 +145,7 @@ def _sentence(table: pd.DataFrame, limit: int, hours: int, extra: int) -> str:
     first = (
         f"With a filter on every treatment {fitted['sensor_ml']:.1f} mL"
         f" ({fitted['sensor_low_ml']:.1f} to {fitted['sensor_high_ml']:.1f}) would have"
-        f" gone on to the sensor instead of {was['sensor_ml']:.1f} mL, {less:.1f} mL"
+        f" reached the sensor instead of {was['sensor_ml']:.1f} mL, {less:.1f} mL"
         f" less{shown}."
     )
     if not limit and not hours:

@@ -191,7 +191,7 @@ def _since(look: LookBack, burden: Burden) -> str:
 
 def _burden_words(burden: Burden) -> str:
     if burden.not_estimated_count == burden.treatments_count:
-        return "How much aerosol went on to the sensor cannot be estimated."
+        return "How much aerosol reached the sensor cannot be estimated."
     amount = millilitres(burden.sensor_ml, burden.sensor_low_ml, burden.sensor_high_ml)
     rest = (
         f", {counted(burden.not_estimated_count, 'treatment')} without an estimate"
@@ -201,9 +201,7 @@ def _burden_words(burden: Burden) -> str:
     place = ""
     if burden.place is not None and burden.of > 1:
         place = f", place {burden.place} of {burden.of} ventilators"
-    return (
-        f"An estimated {amount} of nebulised liquid went on to the sensor{rest}{place}."
-    )
+    return f"An estimated {amount} of nebulised liquid reached the sensor{rest}{place}."
 
 
 def _drift_words(
