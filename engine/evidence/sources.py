@@ -288,3 +288,49 @@ BLASIUS_1913 = Source(
     journal="VDI Mitteilungen 131",
     known="from memory",
 )
+ANESTHESIOLOGY_2017 = Source(
+    key="ANESTHESIOLOGY_2017",
+    authors="image report, authors not noted",
+    year=2017,
+    title="A circuit filter clogged by nebulised epoprostenol",
+    journal="Anesthesiology 127(2):383",
+)
+CHAN_2025 = Source(
+    key="CHAN_2025",
+    authors="Chan C",
+    year=2025,
+    title="Slow pressure decay after nebulised tranexamic acid (teaching case 4933)",
+    journal="University teaching series",
+    address="umem.org/educational_pearls/4933",
+)
+ESCMID_2017 = Source(
+    key="ESCMID_2017",
+    authors="European consensus group",
+    year=2017,
+    title="Position paper on nebulised anti-infectives in ventilated patients",
+    journal="Clinical Microbiology and Infection 23:640",
+    address="pubmed 28347790",
+)
+FDA_2009 = Source(
+    key="FDA_2009",
+    authors="US Food and Drug Administration",
+    year=2009,
+    title="Safety alert on nebulised zanamivir powder, 9 October 2009",
+    journal="as reported in the medical press",
+    address="medscape.com/viewarticle/710336",
+)
+RIBAVIRIN_LABEL = Source(
+    key="RIBAVIRIN_LABEL",
+    authors="label of ribavirin for inhalation",
+    year=None,
+    title="Boxed warning on precipitate in ventilator circuits",
+    journal="drug label",
+    address="blackboxrx.com/app/display/144",
+)
+WILLIAMS_2010 = Source(
+    key="WILLIAMS_2010",
+    authors="Williams JD and others",
+    year=2010,
+    title="Obstruction of an HME during continuous nebulisation",
+    journal="Chest 138(4 Suppl):10A",
+)

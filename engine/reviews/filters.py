@@ -10,7 +10,8 @@ import numpy as np
 import pandas as pd
 
 from engine.errors import UnknownId
-from engine.evidence.filter import POOLED_FILTERS_COUNT
+from engine.evidence.filter import NEW_FILTER_CMH2O_PER_LPS, POOLED_FILTERS_COUNT
+from engine.evidence.stickiness import stickiness_of
 from engine.reviews import filter_rows as rows
 from engine.reviews.wording import counted, listed
 from engine.stats.filter_life import FilterLife, life_of
@@ -37,6 +38,12 @@ DRAWN_FILTERS = 24  # small multiples whose readings leave the engine
 LIMIT_IS_LOCAL = (
     "No published bedside level exists for filter resistance: the limit is this "
     "department's own."
+)
+PUBLISHED_NEW = (
+    f"For scale: breathing-circuit filters never used had a median of"
+    f" {float(NEW_FILTER_CMH2O_PER_LPS):g} cmH2O/(L/s), quartiles"
+    f" {NEW_FILTER_CMH2O_PER_LPS.low:g} to {NEW_FILTER_CMH2O_PER_LPS.high:g}, at a flow"
+    f" the source does not give ({NEW_FILTER_CMH2O_PER_LPS.source.key})."
 )
 POINTS_ONLY = (
     "The share that points to aerosol is an association across filters, worked out "
@@ -82,6 +89,7 @@ class OneFilter:
     readings: pd.DataFrame
     gathered: pd.DataFrame
     treatments: pd.DataFrame
+    drugs: pd.DataFrame  # what is on record of the drugs given through it
     per_ml: Slope
     share: float | None
     share_low: float | None
@@ -120,7 +128,7 @@ def review_filters(replay: Replay) -> Filters:
         groups=groups,
         curves=curves,
         doubts=replay.frame(rows.DOUBT_COUNTS),
-        cautions=(LIMIT_IS_LOCAL, POINTS_ONLY),
+        cautions=(LIMIT_IS_LOCAL, PUBLISHED_NEW, POINTS_ONLY),
     )
 
 
@@ -145,13 +153,15 @@ def one_filter(
     per_ml = theil_sen(
         since["captured_ml"].to_numpy(), since["resistance_cmh2o_per_lps"].to_numpy()
     )
+    treatments = replay.frame(rows.TREATMENTS_OF, {"filter_id": filter_id})
     return OneFilter(
         sentence=_one_sentence(filter_id, facts, life, review),
         facts=facts,
         life=life,
         readings=readings,
         gathered=gathered,
-        treatments=replay.frame(rows.TREATMENTS_OF, {"filter_id": filter_id}),
+        treatments=treatments,
+        drugs=_drugs(treatments),
         per_ml=per_ml,
         share=_or_none(facts["share"]),
         share_low=_or_none(facts["share_low"]),
@@ -441,6 +451,24 @@ def _forecast_words(life: FilterLife, review: Filters) -> str:
         f" {life.time_to_limit_h:.0f} h after the last reading"
         f" ({life.time_to_limit_low_h or 0:.0f} h to {end})."
     )
+
+
+def _drugs(treatments: pd.DataFrame) -> pd.DataFrame:
+    """Each drug given, how often, and what has been reported of it."""
+    found = []
+    for drug, count in treatments["drug"].value_counts().items():
+        known = stickiness_of(str(drug))
+        found.append(
+            {
+                "drug": drug,
+                "treatments_count": int(count),
+                "reported": known.reported if known else "nothing found",
+                "firmness": known.firmness if known else "",
+                "source": known.source.key if known else "",
+            }
+        )
+    columns = ["drug", "treatments_count", "reported", "firmness", "source"]
+    return pd.DataFrame(found, columns=columns)
 
 
 def _cautions_of(facts: dict[str, Any]) -> tuple[str, ...]:

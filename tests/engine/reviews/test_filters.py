@@ -153,6 +153,15 @@ def test_a_filter_in_depth_carries_its_readings_treatments_and_catch(reviewed):
     assert caught.iloc[-1] == pytest.approx(float((fraction * 3.0).sum()))
 
 
+def test_what_is_on_record_of_a_drug_stands_beside_the_filter(reviewed):
+    treated = treatments([5, 15]) + treatments(
+        [30], treatment_id="other", drug="sodium chloride 0.9 %"
+    )
+    drugs = one_filter(reviewed([use()], readings([2.2]), treated), "F1").drugs
+    assert drugs["firmness"].tolist() == ["one case, of an HME", ""]
+    assert drugs["reported"].tolist()[1] == "nothing found"
+
+
 def test_humid_hours_run_on_from_one_treatment_to_the_next(reviewed):
     """Humidifier on at hours 10 and 30, off at 50: humid until 50, dry after."""
     treated = treatments([10, 30], "F1") + treatments(
