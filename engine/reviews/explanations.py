@@ -30,6 +30,7 @@ class Condition:
     holds: bool | None
     rows: Rows = ()
     otherwise: str = ""  # what is so where it does not hold
+    weight: int = 1  # how specific it is; 0 where other causes would show it as well
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -46,8 +47,9 @@ class Explanation:
 
     @property
     def weight(self) -> int:
-        """How many conditions that speak for it hold."""
-        return sum(c.holds is True and c.role != "against" for c in self.conditions)
+        """How much speaks for it: its conditions that hold, by how specific they are."""
+        speaking = [c for c in self.conditions if c.role != "against" and c.holds]
+        return sum(c.weight for c in speaking)
 
     @property
     def rows(self) -> Rows:
@@ -225,11 +227,13 @@ def _aerosol_film(e: Evidence) -> list[Condition]:
             " treatments",
             holds=slow_after,
             rows=e.drift_rows,
+            weight=2,
         ),
         Condition(
             role="also",
             text="the estimated burden is among the highest of all ventilators",
             holds=_among_highest(e),
+            weight=0,
         ),
         Condition(
             role="also",
@@ -361,6 +365,7 @@ def _electronics(e: Evidence) -> list[Condition]:
             otherwise="the volume ratio drifted before the fault",
             holds=at_once,
             rows=e.drift_rows,
+            weight=0,
         ),
         Condition(
             role="needed",
