@@ -334,3 +334,26 @@ WILLIAMS_2010 = Source(
     title="Obstruction of an HME during continuous nebulisation",
     journal="Chest 138(4 Suppl):10A",
 )
+WILSON_1931 = Source(
+    key="WILSON_1931",
+    authors="Wilson EB, Hilferty MM",
+    year=1931,
+    title="The distribution of chi-square",
+    journal="Proceedings of the National Academy of Sciences 17:684",
+    known="from memory",
+)
+CDC_2003 = Source(
+    key="CDC_2003",
+    authors="Centers for Disease Control and Prevention",
+    year=2003,
+    title="Environmental infection control in health-care facilities, Appendix B",
+    address="cdc.gov/infection-control/hcp/environmental-control/appendix-b-air.html",
+)
+OTOOLE_2020 = Source(
+    key="OTOOLE_2020",
+    authors="O'Toole C, McGrath JA, Joyce M and others",
+    year=2020,
+    title="Fugitive aerosol beside a ventilated bench lung",
+    journal="Aerosol and Air Quality Research 20:2604",
+    address="aaqr.org/articles/aaqr-20-04-covid-0176",
+)

@@ -14,7 +14,6 @@ from numpy.typing import ArrayLike
 from engine.evidence import droplet, lung
 from engine.physics.air import coefficients
 from engine.physics.droplets import (
-    aerodynamic_diameter_um,
     particle_diameter_um,
     size_nodes_um,
     size_weights,

@@ -1,0 +1,509 @@
+"""The split at the Y: which part of a generator's output the patient breathes in.
+
+Gas moves along the inspiratory limb with the breath: fast while the patient breathes
+in, by bias flow and driving gas only while the patient breathes out. Count the gas
+that passes the Y instead of the time, and everything becomes a shift: what is put out
+at position u of the breath arrives at u + v, v being the gas between generator and Y.
+The breath repeats every ``cycle_ml``; arrivals in its first ``window_ml`` are inhaled
+and kept, the rest is swept past. Output of the expiration is *parked* in the limb; how
+far the bias flow moves it decides whether it is there when the next breath comes.
+
+A real limb disperses: v is not one volume but spread, as if the gas went through
+stirred tanks in series. Where the spread is small the split is averaged over a few
+volumes; where it is wide it is summed as a Fourier series over the breath, whose
+zeroth term is the fully mixed limb. Both tend to the exact plug-flow and mixed limits.
+
+All of it is ours; the tests repeat it by following parcels of gas one by one.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from typing import TypeAlias
+
+import numpy as np
+from scipy.special import ndtri
+
+from engine.evidence import device, wye
+from engine.physics.air import coefficients
+
+Values: TypeAlias = np.ndarray | float
+# gas volume in mL and number of stirred tanks, for each part of the way to the Y
+Parts: TypeAlias = Sequence[tuple[Values, float]]
+
+_TINY = 1e-12
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Cycle:
+    """One breath as the Y sees it; each field a number or an array of n.
+
+    inspired_ml    gas past the Y while the patient breathes in
+    swept_ml       gas past the Y while the patient breathes out
+    window_ml      arrivals in this first part of the inspired gas reach the patient
+    peak_ratio     peak over mean of a falling inspiratory flow: 1 constant, 2 to zero
+    patient_share  of the inspired gas, where a leak or bias flow takes the rest
+    """
+
+    inspired_ml: Values
+    swept_ml: Values
+    window_ml: Values
+    inspiratory_s: Values
+    expiratory_s: Values
+    peak_ratio: Values = 1.0
+    patient_share: Values = 1.0
+
+    @property
+    def cycle_ml(self) -> Values:
+        """Gas past the Y in a whole breath."""
+        return self.inspired_ml + self.swept_ml
+
+    @property
+    def cycle_s(self) -> Values:
+        """Time of a whole breath."""
+        return self.inspiratory_s + self.expiratory_s
+
+
+def cycle_of(
+    *,
+    tidal_ml: Values,
+    inspiratory_s: Values,
+    expiratory_s: Values,
+    bias_ml_per_s: Values,
+    gas_ml_per_s: Values = 0.0,
+    dead_ml: Values = 0.0,
+    gas_is_added: bool = False,
+    bias_in_inspiration: Values = False,
+    peak_ratio: Values = 1.0,
+) -> Cycle:
+    """The breath at the Y from what a ventilator is set to.
+
+    Gas     the generator's driving gas; part of the tidal volume unless it is added.
+    Bias    runs while the patient breathes out; with ``bias_in_inspiration`` also
+            while the patient breathes in, as the leak of a single-limb circuit does.
+    Dead    gas between the Y and the tip of the tube: its last filling comes back out.
+    """
+    through_ml = bias_in_inspiration * bias_ml_per_s * inspiratory_s
+    added_ml = gas_ml_per_s * inspiratory_s if gas_is_added else 0.0
+    inspired_ml = tidal_ml + through_ml + added_ml
+    swept_ml_per_s = np.maximum(
+        bias_ml_per_s + gas_ml_per_s, float(wye.STILL_GAS_ML_PER_S)
+    )
+    return Cycle(
+        inspired_ml=inspired_ml,
+        swept_ml=swept_ml_per_s * expiratory_s,
+        window_ml=inspired_ml * np.maximum(1 - dead_ml / tidal_ml, 0.0),
+        inspiratory_s=inspiratory_s,
+        expiratory_s=expiratory_s,
+        peak_ratio=peak_ratio,
+        patient_share=tidal_ml / (tidal_ml + through_ml),
+    )
+
+
+@dataclass(frozen=True, eq=False)
+class Emission:
+    """The part of the breath in which the generator puts out, evenly in time."""
+
+    start_s: Values
+    stop_s: Values
+
+
+EMISSIONS = ("continuous", "inspiration", "expiration", "puff")
+
+
+def emission_of(cycle: Cycle, kind: str) -> Emission:
+    """One of EMISSIONS by name.
+
+    Raises   ValueError for any other name.
+    """
+    ends = {
+        "continuous": (0.0, cycle.cycle_s),
+        "inspiration": (0.0, cycle.inspiratory_s),
+        "expiration": (cycle.inspiratory_s, cycle.cycle_s),
+        "puff": (0.0, np.minimum(float(device.PUFF_S), cycle.inspiratory_s)),
+    }
+    if kind not in ends:
+        raise ValueError(f"emission must be one of {', '.join(EMISSIONS)}; got {kind}")
+    return Emission(*ends[kind])
+
+
+@dataclass(frozen=True, eq=False)
+class Arrivals:
+    """Share of the output that arrives somewhere, and how old it is by then."""
+
+    share: np.ndarray
+    mean_s: np.ndarray
+    variance_s2: np.ndarray
+
+    def airborne_frac(self, loss_per_s: Values) -> np.ndarray:
+        """The share that has not settled on the way.
+
+        Shapes   n arrivals, losses (n, k) -> (n, k); one loss -> n.
+        Holds    ages taken as a gamma distribution of the mean and variance known.
+        """
+        loss = np.asarray(loss_per_s)
+        wide = loss.ndim > self.share.ndim
+        share, mean_s, variance_s2 = (
+            values[..., None] if wide else values
+            for values in (self.share, self.mean_s, self.variance_s2)
+        )
+        scale_s = np.maximum(variance_s2, _TINY) / np.maximum(mean_s, _TINY)
+        power = np.maximum(mean_s, _TINY) / scale_s
+        return share * np.exp(-power * np.log1p(loss * scale_s))
+
+
+def plug_flow(volume_ml: Values, cycle: Cycle, emission: Emission) -> Arrivals:
+    """What is inhaled if the limb does not disperse.
+
+    Shapes   arrays that broadcast; returns their common shape.
+    Checked  engine/evidence/published/wye_values.csv
+    """
+    return _pooled(_inhaled(volume_ml, cycle, emission), cycle.patient_share)
+
+
+def mixed_frac(cycle: Cycle) -> np.ndarray:
+    """What is inhaled if the limb mixes everything: the limit of a long limb."""
+    return np.asarray(cycle.patient_share * cycle.window_ml / cycle.cycle_ml)
+
+
+def dispersed(parts: Parts, cycle: Cycle, emission: Emission) -> Arrivals:
+    """What is inhaled from a limb that disperses: the form the balance uses.
+
+    Parts    each stretch of tubing and each stirred chamber on the way to the Y.
+    Shapes   arrays of n -> n.
+    Holds    share within 0.01 of parcels of gas followed one by one.
+    Checked  engine/evidence/published/wye_values.csv
+    """
+    averaged = _averaged(parts, cycle, emission, _inhaled, cycle.patient_share)
+    wide = _spread_ml(parts) > float(wye.WIDE_SPREAD_FRAC) * cycle.cycle_ml
+    if not np.any(wide):
+        return averaged
+    share = np.where(wide, series_frac(parts, cycle, emission), averaged.share)
+    return Arrivals(share, averaged.mean_s, averaged.variance_s2)
+
+
+def swept(parts: Parts, cycle: Cycle, emission: Emission) -> Arrivals:
+    """What passes the Y outside the window, and its age: the other part of the split.
+
+    The share is exact only with ``1 - dispersed(...).share``; the ages are wanted.
+    """
+    return _averaged(parts, cycle, emission, _swept, 1.0)
+
+
+def series_frac(
+    parts: Parts,
+    cycle: Cycle,
+    emission: Emission,
+    harmonics: int = int(wye.HARMONICS_COUNT),
+) -> np.ndarray:
+    """What is inhaled, as a Fourier series over the breath; nothing settles.
+
+    Holds    exact as the number of harmonics grows; a dozen do where the spread of
+             the volume is above a tenth of the breath's.
+    Shapes   arrays of n -> n.
+    Checked  engine/evidence/published/wye_values.csv
+    """
+    circle = 2 * np.pi / np.asarray(cycle.cycle_ml)
+    edges, shares = _emission_edges(cycle, emission)
+    turns = [np.exp(1j * circle * edge) for edge in edges]
+    window = np.exp(-1j * circle * cycle.window_ml)
+    total = np.asarray(cycle.window_ml / cycle.cycle_ml, dtype=float)
+    power, turned = window, list(turns)
+    for n in range(1, harmonics + 1):
+        w = 1j * n * circle
+        received = (1 - power) / (w * cycle.cycle_ml)
+        sent = sum(
+            share * _mean_turn(turned[i], turned[i + 1], w, edges[i + 1] - edges[i])
+            for i, share in enumerate(shares)
+        )
+        spread = 1.0
+        for volume_ml, tanks in parts:
+            spread = spread * _tanks(w * volume_ml / tanks, tanks)
+        total = total + 2 * np.real(received * sent * spread)
+        power = power * window
+        turned = [value * turn for value, turn in zip(turned, turns, strict=True)]
+    return np.clip(total, 0.0, 1.0) * cycle.patient_share
+
+
+# --- the breath in volume and in time --------------------------------------------
+
+
+def _inspiratory_time_s(cycle: Cycle, position_ml: np.ndarray) -> np.ndarray:
+    """When a position of the inspired gas passes the Y."""
+    u = np.clip(position_ml / cycle.inspired_ml, 0.0, 1.0)
+    ratio = cycle.peak_ratio
+    if np.ndim(ratio) == 0 and ratio == 1:
+        return cycle.inspiratory_s * u
+    root = np.sqrt(np.maximum(ratio**2 - 4 * (ratio - 1) * u, 0.0))
+    return cycle.inspiratory_s * 2 * u / (ratio + root)
+
+
+def _inspired_by_ml(cycle: Cycle, time_s: Values) -> np.ndarray:
+    """The other way round: gas inspired by this time."""
+    s = np.clip(np.asarray(time_s) / cycle.inspiratory_s, 0.0, 1.0)
+    return cycle.inspired_ml * s * (cycle.peak_ratio - (cycle.peak_ratio - 1) * s)
+
+
+def _expiratory_time_s(cycle: Cycle, position_ml: np.ndarray) -> np.ndarray:
+    share = np.clip((position_ml - cycle.inspired_ml) / cycle.swept_ml, 0.0, 1.0)
+    return cycle.inspiratory_s + cycle.expiratory_s * share
+
+
+def _swept_by_ml(cycle: Cycle, time_s: Values) -> np.ndarray:
+    share = np.clip((time_s - cycle.inspiratory_s) / cycle.expiratory_s, 0.0, 1.0)
+    return cycle.inspired_ml + cycle.swept_ml * share
+
+
+_Clock: TypeAlias = Callable[[Cycle, np.ndarray], np.ndarray]
+_Piece: TypeAlias = tuple[np.ndarray, np.ndarray, np.ndarray]
+
+
+@dataclass(frozen=True, eq=False)
+class _Stretch:
+    """A stretch of the breath inside one phase, with the clock of that phase."""
+
+    start_ml: Values
+    stop_ml: Values
+    clock: _Clock
+
+
+def _outputs(cycle: Cycle, emission: Emission) -> tuple[_Stretch, _Stretch]:
+    return (
+        _Stretch(
+            _inspired_by_ml(cycle, emission.start_s),
+            _inspired_by_ml(cycle, emission.stop_s),
+            _inspiratory_time_s,
+        ),
+        _Stretch(
+            _swept_by_ml(cycle, emission.start_s),
+            _swept_by_ml(cycle, emission.stop_s),
+            _expiratory_time_s,
+        ),
+    )
+
+
+def _inhaled(volume_ml: Values, cycle: Cycle, emission: Emission) -> list[_Piece]:
+    put_in, put_out = _outputs(cycle, emission)
+    window = _Stretch(0.0, cycle.window_ml, _inspiratory_time_s)
+    met = _meeting(volume_ml, cycle, emission)
+    return [met(put_in, window, 0), met(put_in, window, 1), met(put_out, window, 1)]
+
+
+def _swept(volume_ml: Values, cycle: Cycle, emission: Emission) -> list[_Piece]:
+    put_in, put_out = _outputs(cycle, emission)
+    late = _Stretch(cycle.window_ml, cycle.inspired_ml, _inspiratory_time_s)
+    after = _Stretch(cycle.inspired_ml, cycle.cycle_ml, _expiratory_time_s)
+    met = _meeting(volume_ml, cycle, emission)
+    return [
+        met(output, window, lap)
+        for output in (put_in, put_out)
+        for window in (late, after)
+        for lap in (0, 1)
+    ]
+
+
+def _meeting(
+    volume_ml: Values, cycle: Cycle, emission: Emission
+) -> Callable[[_Stretch, _Stretch, int], _Piece]:
+    """How an output and a window meet after the shift by ``volume_ml``.
+
+    The function returned gives the share of the output that arrives in the window,
+    and its age at either end of the overlap; age runs evenly between the two.
+    """
+    cycle_ml, cycle_s = cycle.cycle_ml, cycle.cycle_s
+    laps = np.floor(volume_ml / cycle_ml)
+    shift_ml = volume_ml - laps * cycle_ml
+    duration_s = np.maximum(emission.stop_s - emission.start_s, _TINY)
+
+    def met(output: _Stretch, window: _Stretch, lap: int) -> _Piece:
+        back_ml = lap * cycle_ml - shift_ml
+        low = np.maximum(output.start_ml, window.start_ml + back_ml)
+        high = np.maximum(np.minimum(output.stop_ml, window.stop_ml + back_ml), low)
+        out_low, out_high = output.clock(cycle, low), output.clock(cycle, high)
+        waited_s = (laps + lap) * cycle_s
+        return (
+            (out_high - out_low) / duration_s,
+            waited_s + window.clock(cycle, low - back_ml) - out_low,
+            waited_s + window.clock(cycle, high - back_ml) - out_high,
+        )
+
+    return met
+
+
+def _pooled(pieces: list[_Piece], patient_share: Values) -> Arrivals:
+    """Several overlaps as one: total share, mean and variance of age."""
+    share, first, second = _moments(pieces)
+    safe = np.maximum(share, _TINY)
+    mean_s = first / safe
+    return Arrivals(
+        share * patient_share, mean_s, np.maximum(second / safe - mean_s**2, 0.0)
+    )
+
+
+def _moments(pieces: list[_Piece]) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Sums of share, share x age and share x age squared, age even in each piece."""
+    share = sum(piece[0] for piece in pieces)
+    first = sum(part * (a + b) / 2 for part, a, b in pieces)
+    second = sum(part * (a * a + a * b + b * b) / 3 for part, a, b in pieces)
+    return np.asarray(share), np.asarray(first), np.asarray(second)
+
+
+# --- a limb that disperses -------------------------------------------------------
+
+
+def _volume_ml(parts: Parts) -> np.ndarray:
+    return np.asarray(sum(volume_ml for volume_ml, _ in parts))
+
+
+def _spread_ml(parts: Parts) -> np.ndarray:
+    """Standard deviation of the volume between generator and Y."""
+    return np.sqrt(sum(np.asarray(volume) ** 2 / tanks for volume, tanks in parts))
+
+
+_NORMAL_QUANTILES = ndtri(
+    (np.arange(int(wye.VOLUME_NODES_COUNT)) + 0.5) / int(wye.VOLUME_NODES_COUNT)
+)
+
+
+def _volume_nodes_ml(parts: Parts) -> np.ndarray:
+    """Volumes of equal weight that stand for the spread, one row of them a treatment.
+
+    Source   WILSON_1931 for the quantiles of a gamma distribution.
+    """
+    volume_ml = _volume_ml(parts)
+    ninth, third = coefficients(wye.GAMMA_QUANTILE_COEF)
+    c = (_spread_ml(parts) / np.maximum(volume_ml, _TINY))[..., None] ** 2
+    root = np.maximum(1 - c / ninth + _NORMAL_QUANTILES * np.sqrt(c) / third, 0.0)
+    nodes = root**3
+    return volume_ml[..., None] * nodes / nodes.mean(axis=-1, keepdims=True)
+
+
+def _averaged(
+    parts: Parts,
+    cycle: Cycle,
+    emission: Emission,
+    pieces: Callable[[Values, Cycle, Emission], list[_Piece]],
+    patient_share: Values,
+) -> Arrivals:
+    """The split averaged over the volumes that stand for the spread."""
+    wide_cycle = Cycle(**{k: _column(v) for k, v in vars(cycle).items()})
+    wide_emission = Emission(_column(emission.start_s), _column(emission.stop_s))
+    met = pieces(_volume_nodes_ml(parts), wide_cycle, wide_emission)
+    share, first, second = (moment.mean(axis=-1) for moment in _moments(met))
+    safe = np.maximum(share, _TINY)
+    mean_s = first / safe
+    return Arrivals(
+        share * patient_share, mean_s, np.maximum(second / safe - mean_s**2, 0.0)
+    )
+
+
+def _column(values: Values) -> Values:
+    return values[..., None] if isinstance(values, np.ndarray) else values
+
+
+def _emission_edges(
+    cycle: Cycle, emission: Emission
+) -> tuple[list[np.ndarray], list[np.ndarray]]:
+    """The output as stretches of constant flow: their ends in mL, share of each."""
+    steady = bool(np.all(np.asarray(cycle.peak_ratio) == 1))
+    pieces = 1 if steady else int(wye.FALLING_FLOW_PIECES_COUNT)
+    last_in_s = np.minimum(emission.stop_s, cycle.inspiratory_s)
+    first_in_s = np.minimum(emission.start_s, cycle.inspiratory_s)
+    first_out_s = np.maximum(emission.start_s, cycle.inspiratory_s)
+    last_out_s = np.maximum(emission.stop_s, cycle.inspiratory_s)
+    times = [
+        first_in_s + (last_in_s - first_in_s) * i / pieces for i in range(pieces + 1)
+    ]
+    edges = [np.asarray(_inspired_by_ml(cycle, t)) for t in times]
+    duration_s = np.maximum(emission.stop_s - emission.start_s, _TINY)
+    shares = [(last_in_s - first_in_s) / duration_s / pieces] * pieces
+    # Between the last of the inspiration and the first of the expiration: no output.
+    edges += [_swept_by_ml(cycle, first_out_s), _swept_by_ml(cycle, last_out_s)]
+    shares += [0.0 * duration_s, (last_out_s - first_out_s) / duration_s]
+    return edges, shares
+
+
+def _mean_turn(
+    start: np.ndarray, stop: np.ndarray, w: np.ndarray, length_ml: np.ndarray
+) -> np.ndarray:
+    """Mean of exp(w u) over a stretch; its value at the start where there is none."""
+    reach = w * length_ml
+    short = np.abs(reach) < 1e-9
+    return np.where(short, start, (stop - start) / np.where(short, 1.0, reach))
+
+
+def _tanks(w: np.ndarray, tanks: float) -> np.ndarray:
+    """How stirred tanks in series damp and turn one harmonic: (1 - w)^-tanks."""
+    one = 1 / (1 - w)
+    if tanks == 1:
+        return one
+    if tanks == 8:
+        four = (one * one) ** 2
+        return four * four
+    return one**tanks
+
+
+# --- the patient's side of the Y -------------------------------------------------
+
+
+def patient_side(
+    *,
+    tidal_ml: Values,
+    inspiratory_s: Values,
+    expiratory_s: Values,
+    to_wye_ml: Values,
+    dead_ml: Values,
+    emission_start_s: Values,
+    emission_stop_s: Values,
+    gas_ml_per_s: Values = 0.0,
+    time_constant_s: Values,
+) -> tuple[np.ndarray, Arrivals]:
+    """What is inhaled of a generator between Y and airway.
+
+    Output of the inspiration goes straight in, but for the last filling of the dead
+    space. Output of the expiration is carried out past the Y by the gas breathed out,
+    until so little is still to come that it stays; that part is inhaled next.
+
+    To Y     gas between generator and Y; ``dead_ml`` between generator and tube tip.
+    Returns  the share inhaled at once, and the share kept for the next breath.
+    Holds    passive expiration with one time constant.
+    Checked  engine/evidence/published/wye_values.csv
+    """
+    cycle_s = inspiratory_s + expiratory_s
+    duration_s = np.maximum(emission_stop_s - emission_start_s, _TINY)
+    stays_s = inspiratory_s + np.minimum(
+        carried_out_s(tidal_ml, to_wye_ml, gas_ml_per_s, expiratory_s, time_constant_s),
+        expiratory_s,
+    )
+    breathed_in_s = np.maximum(
+        np.minimum(emission_stop_s, inspiratory_s) - emission_start_s, 0.0
+    )
+    kept_s = np.maximum(
+        np.minimum(emission_stop_s, cycle_s) - np.maximum(emission_start_s, stays_s),
+        0.0,
+    )
+    at_once = breathed_in_s / duration_s * np.maximum(1 - dead_ml / tidal_ml, 0.0)
+    waits = Arrivals(np.asarray(kept_s / duration_s), kept_s / 2, kept_s**2 / 12)
+    return np.asarray(at_once), waits
+
+
+def carried_out_s(
+    tidal_ml: Values,
+    to_wye_ml: Values,
+    gas_ml_per_s: Values,
+    expiratory_s: Values,
+    time_constant_s: Values,
+) -> np.ndarray:
+    """Time into expiration until which output is still carried past the Y.
+
+    From then on the gas still to come, breathed out or driving the generator, fills
+    less than the way to the Y.
+    """
+    t = time_constant_s * np.log(np.maximum(tidal_ml / to_wye_ml, 1.0))
+    for _ in range(8):
+        breath_ml = tidal_ml * np.exp(-t / time_constant_s)
+        surplus_ml = breath_ml + gas_ml_per_s * (expiratory_s - t) - to_wye_ml
+        slope = breath_ml / time_constant_s + gas_ml_per_s
+        t = t + np.maximum(surplus_ml, 0.0) / slope
+    return np.asarray(t)
