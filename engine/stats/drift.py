@@ -33,8 +33,9 @@ class Drift:
 
     ``drifting``  True, False, or None where the checks are too few to tell
     ``started_h`` when it began, with the ends of its interval; ``detected_h`` when
-                  the average first left its limits; ``ended_h`` the calibration
-                  that ended it, None while it goes on
+                  the average left its limits
+    ``ended_h``   the calibration that ended it, or the check by which the average
+                  was back inside; None while it goes on
     ``sudden``    True where a step fits better than a slope
     """
 
@@ -106,7 +107,8 @@ def drift_of(
         low[era.places], high[era.places] = level - half, level + half
         signal = _signal(average, half, r[era.places], level, sd, limit_sd)
         if signal is not None:
-            found = _described(t, r, era, level, sd, signal)
+            out = np.flatnonzero(np.abs(average - level) > half)
+            found = _described(t, r, era, level, sd, signal, int(out.max(initial=0)))
     counts = {
         "spread": sd,
         "ewma": smooth,
@@ -149,8 +151,9 @@ def own_spread(
 ) -> float:
     """Spread of one check, from the steps between neighbouring checks.
 
-    Steps hardly feel a slow drift. The median step is used, so that a jump does not
-    count either; with few checks the stated accuracy of flow stands in.
+    Steps hardly feel a slow drift. Steps far beyond the median one are left out, so
+    that a jump does not count either; with few checks the stated accuracy of flow
+    stands in.
     """
     t, r = np.asarray(hours, float), np.asarray(ratio, float)
     good = np.isfinite(t) & np.isfinite(r)
@@ -161,7 +164,10 @@ def own_spread(
     pooled = np.concatenate(steps) if steps else np.empty(0)
     if len(pooled) + 1 < int(OWN_SPREAD_CHECKS_COUNT):
         return float(FLOW_READING_SPREAD_FRAC)
-    return max(float(np.median(pooled)) / _MEDIAN_STEP, float(SMALLEST_SPREAD_FRAC))
+    usual = float(np.median(pooled)) / _MEDIAN_STEP * math.sqrt(2)
+    kept = pooled[pooled <= _FAR_STEP * usual]
+    sd = math.sqrt(float((kept**2).mean()) / 2) / _CUT_AT_FAR if len(kept) else 0.0
+    return max(sd, float(SMALLEST_SPREAD_FRAC))
 
 
 def broken_line(hours: np.ndarray, values: np.ndarray) -> tuple[float, float, float]:
@@ -174,6 +180,9 @@ def broken_line(hours: np.ndarray, values: np.ndarray) -> tuple[float, float, fl
 
 # Median of the absolute difference of two normal values, in standard deviations.
 _MEDIAN_STEP = 0.6744897501960817 * math.sqrt(2)
+# Steps beyond this many of their own spreads are jumps; cutting there takes this share
+# off the spread of normal values.
+_FAR_STEP, _CUT_AT_FAR = 3.0, 0.9866
 _KNEES_PER_STEP = 8
 
 
@@ -230,7 +239,7 @@ def _signal(
     sd: float,
     limit_sd: float,
 ) -> int | None:
-    """The first check at which a drift is called.
+    """The check at which the latest drift is called.
 
     Either the average has been outside its limits twice running, with both checks
     themselves off on that side; or two checks running lie off by more than the limit,
@@ -242,13 +251,31 @@ def _signal(
     twice_out = (side[1:] != 0) & (side[1:] == side[:-1])
     pair = (own[1:] == own[:-1]) & (own[1:] == side[1:]) & twice_out
     off = pair | ((far[1:] != 0) & (far[1:] == far[:-1]))
-    return int(off.argmax()) + 1 if off.any() else None
+    called = np.flatnonzero(off) + 1
+    if len(called) == 0:
+        return None
+    # The latest excursion counts: go back while the average stays out on its side.
+    last = int(called[-1])
+    away = np.sign(r[last] - level)
+    back = np.flatnonzero(np.sign(average[:last] - level) != away)
+    since = int(back[-1]) + 1 if len(back) else 0
+    return int(called[called >= since][0])
 
 
 def _described(
-    t: np.ndarray, r: np.ndarray, era: _Era, level: float, sd: float, signal: int
+    t: np.ndarray,
+    r: np.ndarray,
+    era: _Era,
+    level: float,
+    sd: float,
+    signal: int,
+    last_out: int,
 ) -> Drift:
     x, y = t[era.places], r[era.places]
+    back = float(x[last_out + 1]) if signal <= last_out < len(x) - 1 else None
+    ended = back if era.end_h is None or back is not None else era.end_h
+    if back is not None:
+        x, y = x[: last_out + 1], y[: last_out + 1]
     knees, misfits, slopes = _knees(x, y)
     falling = bool(y[signal] < level)
     with_sign = (slopes < 0) if falling else (slopes > 0)
@@ -264,7 +291,7 @@ def _described(
         started_low_h=low,
         started_high_h=high,
         detected_h=float(x[signal]),
-        ended_h=era.end_h,
+        ended_h=ended,
         falling=falling,
         sudden=bool(sudden),
         change_per_h=None if sudden else float(slopes[best]),

@@ -13,13 +13,19 @@ from __future__ import annotations
 
 import csv
 import sys
+import tempfile
 from collections import Counter
+from datetime import datetime
 from pathlib import Path
 
 import numpy as np
+from made_faults import CAUSES, made, moment
 from scipy.stats import beta
 
+from engine.log import open_log
+from engine.log.schema import write_log
 from engine.policy import load_policy
+from engine.reviews.incident import Incident, review_incident
 from engine.stats.drift import drift_of
 from engine.stats.filter_life import life_of
 
@@ -35,6 +41,8 @@ def main(departments: int = 500) -> None:
         rng = np.random.default_rng(seed)
         filters(rng, tally, seed)
         sensors(rng, tally)
+        with tempfile.TemporaryDirectory() as folder:
+            fault(seed, tally, Path(folder))
     rows = [row(tally, departments, *asked) for asked in ASKED]
     write(rows)
     for line in rows:
@@ -178,6 +186,51 @@ def sensors(rng: np.random.Generator, tally: Counter[str]) -> None:
             tally["no drift called"] += bool(done.drifting)
 
 
+def fault(seed: int, tally: Counter[str], folder: Path) -> None:
+    """One whole log with one fault, reviewed; was its cause put first?"""
+    cause, tables, truth = made(seed)
+    write_log(folder / "log.duckdb", tables, "Etc/UTC", datetime(2026, 6, 1))
+    with open_log(folder / "log.duckdb") as log:
+        done = replayed(log)
+        review = review_incident(done, "INC")
+        done.close()
+    recorded = cause != "none"
+    right = leads(review, cause) if recorded else nothing_fits(review)
+    tally["recorded" if recorded else "unrecorded"] += 1
+    tally["recorded first" if recorded else "unrecorded none"] += right
+    tally[f"{cause} fault"] += 1
+    tally[f"{cause} first"] += right
+    tally["faults"] += 1
+    tally["supported"] += any(e.grade == "supported" for e in review.explanations)
+    if truth["drift_day"] is not None:
+        tally["film drift of"] += 1
+        if review.drift_started_at is not None:
+            away = review.drift_started_at - moment(truth["drift_day"])
+            tally["film drift within"] += abs(away.total_seconds()) <= 3 * 86400
+
+
+def leads(review: Incident, cause: str) -> bool:
+    """Whether the true cause stands first, alone or tied."""
+    first = review.explanations[0]
+    own = next(e for e in review.explanations if e.id == cause)
+    return own.grade == first.grade == "consistent" and own.weight == first.weight
+
+
+def nothing_fits(review: Incident) -> bool:
+    """Whether no explanation is called consistent where nothing was recorded."""
+    return all(e.grade in {"no record", "against"} for e in review.explanations)
+
+
+def replayed(log):
+    """The replay of a log; by hand where the joint is not yet in place."""
+    try:
+        from engine.replay import replay
+    except ImportError:
+        sys.path.insert(0, str(Path(__file__).parents[1] / "engine" / "reviews"))
+        from conftest import by_hand as replay
+    return replay(log, load_policy())
+
+
 # question, right, of, target, how the target is met
 ASKED: tuple[tuple[str, str, str, str], ...] = (
     (
@@ -251,6 +304,40 @@ ASKED: tuple[tuple[str, str, str, str], ...] = (
         "",
     ),
     ("level sensors called drifting, 150 days", "no drift called", "no drift", ""),
+    (
+        "faults that leave a record: true cause first or tied first",
+        "recorded first",
+        "recorded",
+        ">= 0.80",
+    ),
+    *(
+        (
+            f"  of these, {cause.replace('_', ' ')}",
+            f"{cause} first",
+            f"{cause} fault",
+            "",
+        )
+        for cause in CAUSES
+        if cause != "none"
+    ),
+    (
+        "faults that leave no record: nothing called consistent",
+        "unrecorded none",
+        "unrecorded",
+        "",
+    ),
+    (
+        "film faults: start of the drift within 3 days",
+        "film drift within",
+        "film drift of",
+        ">= 0.80",
+    ),
+    (
+        "faults without an examination called supported",
+        "supported",
+        "faults",
+        "<= 0.00",
+    ),
 )
 
 

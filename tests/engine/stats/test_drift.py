@@ -65,6 +65,22 @@ def test_a_calibration_ends_a_drift():
     assert done.ended_h == 40 * 24
 
 
+def test_a_drift_that_goes_back_by_itself_has_an_end():
+    away = np.where((DAYS >= 20 * 24) & (DAYS < 30 * 24), -0.08, 0.0)
+    done = drift_of(DAYS, 1 + NOISE + away, 0.2, 3.0)
+    assert done.drifting
+    assert 30 * 24 <= done.ended_h <= 45 * 24
+
+
+def test_an_early_excursion_does_not_hide_a_later_drift():
+    early = np.where((DAYS >= 10 * 24) & (DAYS < 14 * 24), 0.06, 0.0)
+    late = -0.15 * np.clip((DAYS - 40 * 24) / (20 * 24), 0, 1)
+    done = drift_of(DAYS, 1 + NOISE + early + late, 0.2, 3.0)
+    assert done.falling
+    assert done.ended_h is None
+    assert abs(done.started_h - 40 * 24) <= 72
+
+
 def test_a_calibration_that_moves_the_level_is_no_drift():
     moved = np.where(DAYS > 30 * 24, 0.05, 0.0)
     calibrated = DAYS == 30 * 24
