@@ -102,11 +102,11 @@ BREATH_ENHANCED_EMITTED_FRAC = Number(
     where="nominal dose leaving the generator as aerosol",
     known="fitted",
 )
-BETWEEN_STUDY_LOGIT = Number(
+DELIVERED_SPREAD_LOGIT = Number(
     value=0.55,
     unit="logit",
     source=OURS,
-    where="spread of whole studies about the estimate",
+    where="spread of single results about the estimate, a study left out of the fit",
     known="fitted",
 )
 WITHIN_STUDY_LOGIT = Number(

@@ -233,3 +233,31 @@ ASSUMED_PATTERN_LOGIT = Number(
     where="breaths the patient takes on top of the ventilator's are not in the model",
     known="ours",
 )
+LEAK_SPREAD_LOGIT = Number(
+    value=0.8,
+    unit="logit",
+    source=OURS,
+    where="spread of results in circuits with a leak, in place of the fitted one",
+    known="ours",
+)
+RESIDUAL_SPREAD_LOGIT = Number(
+    value=0.4,
+    unit="logit",
+    source=OURS,
+    where="spread of what stays in generators of one kind",
+    known="ours",
+)
+BAND_COVER_FRAC = Number(
+    value=0.8,
+    unit="frac",
+    source=OURS,
+    where="share of results the bands are to hold",
+    known="ours",
+)
+SHOWN_DIFFERENCE_RATIO = Number(
+    value=1.4,
+    unit="ratio",
+    source=OURS,
+    where="a smaller difference between sites is within the spread inside a study",
+    known="ours",
+)

@@ -18,6 +18,7 @@ from engine.evidence.shape import Number
 from engine.units import ML_PER_L, MM_PER_CM, S_PER_MIN
 
 GENERATORS = words_of("generator")[:-1]
+LIMB_ML_PER_CM = np.pi / 4 * (float(circuit.LIMB_MM) / MM_PER_CM) ** 2
 
 REFUSALS: tuple[str, ...] = (
     "",
@@ -102,10 +103,12 @@ class Setup:
     peak_ratio: np.ndarray  # peak over mean inspiratory flow, 1 to 2
     bias_ml_per_s: np.ndarray
     gas_ml_per_s: np.ndarray  # driving gas while the patient breathes out
-    distance_cm: np.ndarray
+    distance_cm: np.ndarray  # inspiratory limb to the Y
+    patient_side_cm: np.ndarray  # tubing between the Y and a generator past it
     has_chamber: np.ndarray
     is_humid: np.ndarray
     hme_in_line: np.ndarray
+    is_filter_hme: np.ndarray
     is_tracheostomy: np.ndarray
     tube_mm: np.ndarray
     tube_cm: np.ndarray
@@ -114,13 +117,19 @@ class Setup:
     filter_kind: np.ndarray  # code, -1 unknown
     refusal: np.ndarray  # int8, into REFUSALS
     assumed: np.ndarray  # int32, bits into ASSUMPTIONS
+    emission: str | None = None  # set only where a bench forced one
 
     def __len__(self) -> int:
         return len(self.refusal)
 
     def pick(self, index: np.ndarray | slice) -> Setup:
         """The same setup for some of the treatments."""
-        return Setup(**{f.name: getattr(self, f.name)[index] for f in fields(self)})
+        chosen = {
+            f.name: getattr(self, f.name)[index]
+            for f in fields(self)
+            if f.name != "emission"
+        }
+        return Setup(**chosen, emission=self.emission)
 
     def but(self, **changed: np.ndarray) -> Setup:
         """The same setup with some fields changed."""
@@ -161,13 +170,15 @@ def setup_of(rows: Batch) -> Setup:
         bias_ml_per_s=_bias(rows, single, gaps),
         gas_ml_per_s=_gas(rows, synchronised, gaps),
         distance_cm=_distance(rows, gaps),
-        has_chamber=chamber & ~single,
+        patient_side_cm=_patient_side(rows),
+        has_chamber=chamber,
         is_humid=humid,
         hme_in_line=in_line,
+        is_filter_hme=rows["humidification"] != code_of("humidification", "hme"),
         is_tracheostomy=tracheostomy,
         tube_mm=tube_mm,
         tube_cm=tube_cm,
-        dead_ml=_dead_space(tube_mm, tube_cm, in_line),
+        dead_ml=_dead_space(rows, tube_mm, tube_cm, in_line),
         filter_present=present,
         filter_kind=kind,
         refusal=np.zeros(size(rows), np.int8),
@@ -309,15 +320,23 @@ def _airway(rows: Batch, gaps: _Gaps) -> tuple[np.ndarray, np.ndarray, np.ndarra
     return tracheostomy, tube_mm, tube_cm
 
 
+def _patient_side(rows: Batch) -> np.ndarray:
+    """Tubing between the Y and a generator past it, where it is logged."""
+    past = rows["site"] == code_of("site", "airway_side")
+    return np.where(past, np.nan_to_num(rows["distance_from_wye_cm"], nan=0.0), 0.0)
+
+
 def _dead_space(
-    tube_mm: np.ndarray, tube_cm: np.ndarray, in_line: np.ndarray
+    rows: Batch, tube_mm: np.ndarray, tube_cm: np.ndarray, in_line: np.ndarray
 ) -> np.ndarray:
     bore_ml = np.pi / 4 * (tube_mm / MM_PER_CM) ** 2 * tube_cm
     child = tube_mm < float(tube.ADULT_TUBE_MM)
     fittings_ml = np.where(
         child, float(circuit.SMALL_CONNECTOR_ML), float(circuit.CONNECTOR_ML)
     )
-    return bore_ml + fittings_ml + np.where(in_line, float(circuit.HME_ML), 0.0)
+    past_wye_ml = _patient_side(rows) * LIMB_ML_PER_CM
+    hme_ml = np.where(in_line, float(circuit.HME_ML), 0.0)
+    return bore_ml + fittings_ml + past_wye_ml + hme_ml
 
 
 def _hme(rows: Batch, gaps: _Gaps) -> np.ndarray:

@@ -51,9 +51,11 @@ def bend_laminar_frac(
     Checked  engine/evidence/published/physics_values.csv
     """
     scale, slope, base, per_deg = coefficients(tube.PUI_LAMINAR_COEF)
-    x = np.asarray(stokes, float) / scale
-    passed = (1 + x ** (slope * x + base)) ** (-np.asarray(angle_deg) / per_deg)
-    return 1 - passed
+    x = np.maximum(np.asarray(stokes) / scale, 1e-30)
+    steep = np.exp(np.minimum((slope * x + base) * np.log(x), 80.0))
+    if np.ndim(angle_deg) == 0 and angle_deg == per_deg:
+        return steep / (1 + steep)
+    return 1 - (1 + steep) ** (-np.asarray(angle_deg) / per_deg)
 
 
 def bend_crane_evans_frac(

@@ -1,0 +1,206 @@
+"""One estimate of where the dose went, every stage in order, size by size.
+
+No bands, no assumptions: those are put around it in ``balance.py``.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from engine.columns import FRACTIONS, code_of
+from engine.evidence import circuit, filter_capture, lung, tube
+from engine.physics.constants import Constants
+from engine.physics.droplets import size_weights
+from engine.physics.filter import hme_capture_frac, penetration_frac
+from engine.physics.lung import SUBJECTS, Breath, Subject, intubated_deposition
+from engine.physics.setup import LIMB_ML_PER_CM, Setup
+from engine.physics.sizes import (
+    LPM_PER_ML_PER_S,
+    Sized,
+    expiratory_ml_per_s,
+    inspiratory_ml_per_s,
+    sized_of,
+    tube_passed,
+)
+from engine.physics.split import at_wye, passes_chamber
+
+WEIGHTS = size_weights()
+_AIRWAY_SIDE = code_of("site", "airway_side")
+_EXPIRATORY = code_of("site", "expiratory_limb")
+
+
+@dataclass(frozen=True, eq=False)
+class Estimate:
+    """Fractions of the nominal dose, n each; ``places`` are those of FRACTIONS.
+
+    Beside the places a dose can end: ``delivered`` leaves the tube tip, ``swept``
+    passes the Y outside the breath, ``exhaled`` comes back from the patient, ``load``
+    arrives at the filter position and ``passed`` leaves it.
+    """
+
+    places: dict[str, np.ndarray]
+    delivered: np.ndarray
+    swept: np.ndarray
+    exhaled: np.ndarray
+    load: np.ndarray
+    passed: np.ndarray
+
+
+def estimate(setup: Setup, constants: Constants) -> Estimate:
+    """The balance of each treatment as it is set up."""
+    sized = sized_of(setup, constants)
+    emitted = constants.emitted_frac(setup.generator, setup.is_synchronised)
+    survives = way_survival_frac(setup, constants)
+    split = at_wye(setup, sized, constants)
+    output = emitted * survives
+    inhaled = split.inhaled * WEIGHTS * output[:, None]
+    swept = split.swept * WEIGHTS * output[:, None]
+
+    held = hme_on_the_way_in_frac(setup)[:, None]
+    back = _hme_on_the_way_out_frac(setup)[:, None]
+    reaches_tube = inhaled * (1 - held)
+    delivered = reaches_tube * sized.tube_in
+    tracheobronchial, alveolar, retained = _lung(setup, sized)
+    comes_back = delivered * (1 - retained)
+    tube_out = tube_passed(setup, sized.relaxation_s, expiratory_ml_per_s(setup))
+    exhaled = comes_back * tube_out * (1 - back)
+    swept_in_hme = np.where(setup.site == _AIRWAY_SIDE, back[:, 0], 0.0)[:, None]
+
+    survives_limb = _expiratory_limb_frac(setup, sized)
+    goes_on = swept * (1 - swept_in_hme)
+    load = _sum(goes_on * survives_limb) + _sum(exhaled * survives_limb)
+    filtered, sensor, room = _filter_side(setup, load)
+    places = {
+        "generator_residual": 1 - emitted,
+        "limb": emitted - output + output * (split.settled @ WEIGHTS),
+        "hme": _sum(inhaled * held)
+        + _sum(comes_back * tube_out * back)
+        + _sum(swept * swept_in_hme),
+        "unused_past_wye": _sum(goes_on * (1 - survives_limb)),
+        "tube": _sum(reaches_tube - delivered) + _sum(comes_back * (1 - tube_out)),
+        "tracheobronchial": _sum(delivered * tracheobronchial),
+        "alveolar": _sum(delivered * alveolar),
+        "expiratory_limb": _sum(exhaled * (1 - survives_limb)),
+        "filter": filtered,
+        "sensor_side": sensor,
+        "room": room,
+    }
+    return Estimate(
+        places={name: places[name] for name in FRACTIONS},
+        delivered=_sum(delivered),
+        swept=_sum(swept),
+        exhaled=_sum(exhaled),
+        load=load,
+        passed=sensor + room,
+    )
+
+
+def delivered_frac(
+    setup: Setup, inhaled: np.ndarray, sized: Sized, constants: Constants
+) -> np.ndarray:
+    """Only what leaves the tube tip, from the inhaled shares (n, k) of one site."""
+    output = constants.emitted_frac(setup.generator, setup.is_synchronised)
+    output = output * way_survival_frac(setup, constants)
+    through = (inhaled * sized.tube_in) @ WEIGHTS
+    return output * (1 - hme_on_the_way_in_frac(setup)) * through
+
+
+def way_survival_frac(setup: Setup, constants: Constants) -> np.ndarray:
+    """What Y, chamber and humid gas leave of the output, settling apart."""
+    humid = np.where(takes_humid_factor(setup), constants.humid_frac, 1.0)
+    chamber = np.where(passes_chamber(setup), constants.chamber_frac, 1.0)
+    survives = humid * chamber * constants.wye_frac
+    return np.where(setup.site == _EXPIRATORY, 1.0, survives)
+
+
+def takes_humid_factor(setup: Setup) -> np.ndarray:
+    """Where the bench factor for humid circuits applies.
+
+    Not to breath-enhanced jets, which lose nothing to humid gas on the bench, and not
+    at the airway of a single-limb circuit, past all humid tubing.
+    """
+    enhanced = setup.generator == code_of("generator", "breath_enhanced_jet")
+    at_airway = setup.is_single_limb & (setup.site == _AIRWAY_SIDE)
+    return setup.is_humid & ~enhanced & ~at_airway
+
+
+def hme_on_the_way_in_frac(setup: Setup) -> np.ndarray:
+    """Share an HME takes from aerosol on its way to the patient.
+
+    None where the generator sits between HME and airway.
+    """
+    upstream = setup.hme_in_line & (setup.site != _AIRWAY_SIDE)
+    return np.where(upstream, hme_capture_frac(setup.is_filter_hme), 0.0)
+
+
+def _hme_on_the_way_out_frac(setup: Setup) -> np.ndarray:
+    return np.where(setup.hme_in_line, hme_capture_frac(setup.is_filter_hme), 0.0)
+
+
+def _lung(setup: Setup, sized: Sized) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Shares of what leaves the tube tip left in larger airways and alveoli, and both.
+
+    The dead space was counted at the Y, so the delivery is all in gas that enters.
+    """
+    breath = Breath(
+        tidal_ml=setup.tidal_ml[:, None],
+        inspiratory_ml_per_s=inspiratory_ml_per_s(setup)[:, None],
+        expiratory_ml_per_s=expiratory_ml_per_s(setup)[:, None],
+        dead_ml=setup.dead_ml[:, None],
+        pause_s=setup.pause_s[:, None],
+    )
+    lungs = intubated_deposition(sized.diameter_um, breath, subject_of(setup))
+    enters = (1 - setup.dead_ml / setup.tidal_ml)[:, None]
+    tracheobronchial = lungs.tracheobronchial / enters
+    alveolar = lungs.alveolar / enters
+    return tracheobronchial, alveolar, tracheobronchial + alveolar
+
+
+_LUNGS = ("male", "10y", "5y")
+
+
+def lung_index(setup: Setup) -> np.ndarray:
+    """Which reference lung is taken, by the size of the tube."""
+    return (setup.tube_mm < float(tube.ADULT_TUBE_MM)).astype(int) + (
+        setup.tube_mm < float(lung.SMALL_CHILD_TUBE_MM)
+    )
+
+
+def subject_of(setup: Setup) -> Subject:
+    """The reference lung of each treatment; fields (n, 1)."""
+    index = lung_index(setup)
+    fields = zip(*(vars(SUBJECTS[name]).values() for name in _LUNGS), strict=True)
+    return Subject(*(np.array(values, float)[index][:, None] for values in fields))
+
+
+def _expiratory_limb_frac(setup: Setup, sized: Sized) -> np.ndarray:
+    """Share still airborne at the end of the expiratory limb.
+
+    The gas of a breath pushes the limb's content on; a single limb has no such limb.
+    """
+    limb_ml = float(circuit.EXPIRATORY_LIMB_CM) * LIMB_ML_PER_CM
+    cycle_s = setup.inspiratory_s + setup.expiratory_s
+    swept_ml = (setup.bias_ml_per_s + setup.gas_ml_per_s) * setup.expiratory_s
+    time_s = limb_ml / (setup.tidal_ml + swept_ml) * cycle_s
+    time_s = np.where(setup.is_single_limb, 0.0, time_s)
+    return np.exp(-sized.loss_per_s * time_s[:, None])
+
+
+def _filter_side(
+    setup: Setup, load: np.ndarray
+) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """What the filter holds, what sensors and valve keep, what reaches the room."""
+    through, _, _ = penetration_frac(
+        setup.filter_kind, expiratory_ml_per_s(setup) * LPM_PER_ML_PER_S
+    )
+    passed = load * np.where(setup.filter_present, through, 1.0)
+    sensor = passed * np.where(
+        setup.is_single_limb, 0.0, float(filter_capture.SENSOR_HELD_FRAC)
+    )
+    return load - passed, sensor, passed - sensor
+
+
+def _sum(shares: np.ndarray) -> np.ndarray:
+    return shares.sum(axis=-1)

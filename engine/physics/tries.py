@@ -1,0 +1,85 @@
+"""What is tried out where the log is silent, beside the value the point takes."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+import numpy as np
+
+from engine.columns import code_of
+from engine.evidence import circuit
+from engine.physics.constants import Constants
+from engine.physics.estimate import Estimate
+from engine.physics.setup import (
+    BIAS,
+    DRYING,
+    HEATER,
+    HME,
+    HUMIDITY,
+    LEAK,
+    Setup,
+    tried,
+)
+from engine.units import ML_PER_L, S_PER_MIN
+
+
+def other_setups(setup: Setup) -> Iterator[tuple[np.ndarray, Setup]]:
+    """Other ways the treatment may have been set up: which rows, and how.
+
+    Bias or leak flow at the other values tried; the HME out where it may have been in.
+    """
+    for gap, flows in (
+        (BIAS, circuit.BIAS_TRIED_COEF),
+        (LEAK, circuit.LEAK_TRIED_COEF),
+    ):
+        index = np.flatnonzero(setup.lacks(gap))
+        if len(index) == 0:
+            continue
+        part = setup.pick(index)
+        for lpm in tried(flows)[1:]:
+            flow = np.full(len(index), lpm * ML_PER_L / S_PER_MIN)
+            yield index, part.but(bias_ml_per_s=flow)
+    index = np.flatnonzero(setup.lacks(HME))
+    if len(index):
+        yield index, without_hme(setup.pick(index))
+
+
+def without_hme(setup: Setup) -> Setup:
+    """The same with no HME between Y and airway."""
+    hme_ml = np.where(setup.hme_in_line, float(circuit.HME_ML), 0.0)
+    return setup.but(
+        hme_in_line=np.zeros(len(setup), bool), dead_ml=setup.dead_ml - hme_ml
+    )
+
+
+def humidity_ratio(setup: Setup, constants: Constants) -> np.ndarray:
+    """What the other state of the gas would make of everything past the limb.
+
+    1 where nothing is open: the humidity is logged, or the generator does not mind.
+    """
+    enhanced = setup.generator == code_of("generator", "breath_enhanced_jet")
+    at_airway = setup.is_single_limb & (setup.site == code_of("site", "airway_side"))
+    minds = ~enhanced & ~at_airway
+    maybe_dry = (setup.lacks(HUMIDITY) | setup.lacks(HEATER)) & minds
+    maybe_humid = setup.lacks(DRYING) & minds
+    ratio = np.where(maybe_dry, 1 / constants.humid_frac, 1.0)
+    return np.where(maybe_humid, constants.humid_frac, ratio)
+
+
+def with_other_humidity(found: Estimate, ratio: np.ndarray) -> Estimate:
+    """The estimate in the other state of the gas: all past the limb scaled alike."""
+    kept = ("generator_residual", "limb")
+    places = {
+        name: frac if name in kept else frac * ratio
+        for name, frac in found.places.items()
+    }
+    others = sum(frac for name, frac in places.items() if name != "limb")
+    places["limb"] = np.maximum(1 - others, 0.0)
+    return Estimate(
+        places=places,
+        delivered=found.delivered * ratio,
+        swept=found.swept * ratio,
+        exhaled=found.exhaled * ratio,
+        load=found.load * ratio,
+        passed=found.passed * ratio,
+    )
