@@ -357,3 +357,201 @@ OTOOLE_2020 = Source(
     journal="Aerosol and Air Quality Research 20:2604",
     address="aaqr.org/articles/aaqr-20-04-covid-0176",
 )
+
+# --- placement, conduct and exposure: what the rules and the policies rest on --------
+
+AARC_2012 = Source(
+    key="AARC_2012",
+    authors="Restrepo RD, Walsh BK (authors from memory)",
+    year=2012,
+    title="Humidification during invasive and noninvasive ventilation, guideline",
+    journal="Respiratory Care 57:782",
+    address="abstract in a public copy",
+)
+ARI_2010B = Source(
+    key="ARI_2010B",
+    authors="Ari A, Atalay OT, Harwood R, Sheard MM, Aljamhan EA, Fink JB",
+    year=2010,
+    title="Nebulizer type, position and bias flow in pediatric and adult lung models",
+    journal="Respiratory Care 55(7):845",
+    known="from memory",
+)
+BERLINSKI_2013 = Source(
+    key="BERLINSKI_2013",
+    authors="Berlinski A, Willis JR",
+    year=2013,
+    title="Albuterol delivery by 4 nebulizers in 4 positions, pediatric circuit",
+    journal="Respiratory Care 58(7):1124",
+    address="doi.org/10.4187/respcare.02074",
+)
+BERLINSKI_2015 = Source(
+    key="BERLINSKI_2015",
+    authors="Berlinski A, Willis JR",
+    year=2015,
+    title="Tidal volume, nebulizer type and position in a pediatric model",
+    journal="Respiratory Care 60(10)",
+    address="doi.org/10.4187/respcare.04013",
+)
+DHANANI_2016 = Source(
+    key="DHANANI_2016",
+    authors="Dhanani J and others",
+    year=2016,
+    title="Fundamentals of aerosol therapy in critical care",
+    journal="Critical Care 20",
+    address="doi.org/10.1186/s13054-016-1448-5 (Table 3)",
+)
+DIOT_1995 = Source(
+    key="DIOT_1995",
+    authors="Diot P, Morra L, Smaldone GC",
+    year=1995,
+    title="Albuterol delivery in a model of mechanical ventilation",
+    journal="American Journal of Respiratory and Critical Care Medicine 152",
+    known="from memory",
+)
+DUGERNIER_2017 = Source(
+    key="DUGERNIER_2017",
+    authors="Dugernier J, Ehrmann S, Sottiaux T and others",
+    year=2017,
+    title="Aerosol delivery during invasive mechanical ventilation: a review",
+    journal="Critical Care 21:264",
+    address="doi.org/10.1186/s13054-017-1844-5",
+)
+EHRMANN_2013 = Source(
+    key="EHRMANN_2013",
+    authors="Ehrmann S and others",
+    year=2013,
+    title="Aerosol therapy during mechanical ventilation: an international survey",
+    journal="Intensive Care Medicine",
+    address="pubmed 23525741",
+)
+EHRMANN_2017 = Source(
+    key="EHRMANN_2017",
+    authors="Ehrmann S and others",
+    year=2017,
+    title="Aerosol therapy in intensive care: table of advice on conduct",
+    journal="Annals of Intensive Care 7",
+    address="s13613-017-0301-6, Table 3",
+)
+GEORGOPOULOS_2000 = Source(
+    key="GEORGOPOULOS_2000",
+    authors="Georgopoulos D, Mouloudi E, Kondili E, Klimathianaki M",
+    year=2000,
+    title="Bronchodilator delivery with metered-dose inhaler in ventilated patients",
+    journal="Critical Care 4:227",
+    address="cc698, Table 1",
+)
+HOU_2022 = Source(
+    key="HOU_2022",
+    authors="Hou H, Xu D, Dai B and others",
+    year=2022,
+    title="Position of jet and mesh nebulizers during pressure-controlled ventilation",
+    journal="Frontiers in Medicine 9:950569",
+    address="doi.org/10.3389/fmed.2022.950569",
+)
+INSPSYNC_2024 = Source(
+    key="INSPSYNC_2024",
+    authors="not shown in the part read",
+    year=2024,
+    title="Inspiration-synchronised against continuous vibrating mesh, adult, bench",
+    journal="Journal of Aerosol Medicine and Pulmonary Drug Delivery",
+    address="doi.org/10.1089/jamp.2024.0047; companion conference abstract",
+)
+KELLY_ABSTRACT = Source(
+    key="KELLY_ABSTRACT",
+    authors="Kelly PM, O'Sullivan A, McKenna C, Sweeney L, MacLoughlin R",
+    year=None,
+    title="Nebulizer type and position, support ventilation, tracheostomised adults",
+    journal="conference abstract, aerosol society",
+    address="aerosol-soc.com/abstracts",
+)
+KLEINSTREUER_2014 = Source(
+    key="KLEINSTREUER_2014",
+    authors="Kleinstreuer C and others",
+    year=2014,
+    title="Drug-aerosol delivery: table of nebulizer kinds and their residuals",
+    journal="Table 1, read in a public copy of the table",
+)
+LEE_2022 = Source(
+    key="LEE_2022",
+    authors="Lee and others",
+    year=2022,
+    title="Breath-enhanced jet nebulization on the dry side of the humidifier",
+    journal="Respiratory Care 67:914",
+    address="doi.org/10.4187/respcare.09459",
+)
+LI_2022 = Source(
+    key="LI_2022",
+    authors="Li X and others",
+    year=2022,
+    title="Effect of jet nebulizer gas on ventilator triggering",
+    journal="Frontiers in Medicine 9:1004551",
+)
+MIURA_2026 = Source(
+    key="MIURA_2026",
+    authors="Miura and others",
+    year=2026,
+    title="Vibrating mesh in pediatric models by tidal volume",
+    journal="abstract only, journal not shown in the part read",
+)
+NAUGHTON_2021 = Source(
+    key="NAUGHTON_2021",
+    authors="Naughton PJ, Joyce M, Mac Giolla Eain M, O'Sullivan A, MacLoughlin R",
+    year=2021,
+    title="Aerosol drug delivery options during adult mechanical ventilation",
+    journal="Pharmaceutics 13(10):1574",
+    address="doi.org/10.3390/pharmaceutics13101574",
+)
+NIOSH_AEROSOLIZED = Source(
+    key="NIOSH_AEROSOLIZED",
+    authors="US National Institute for Occupational Safety and Health",
+    year=None,
+    title="Aerosolized medications: hazards to those who give them",
+    journal="web page",
+    address="cdc.gov/niosh/topics/healthcarehsps/aerosolizedmeds.html",
+)
+ODOHERTY_1992 = Source(
+    key="ODOHERTY_1992",
+    authors="O'Doherty MJ, Thomas SHL, Page CJ, Treacher DF, Nunan TO",
+    year=1992,
+    title="Nebulizer type, position and volume of fill in a ventilated lung model",
+    journal="American Review of Respiratory Disease 146:383",
+    address="abridged abstract",
+)
+OTTO_2023 = Source(
+    key="OTTO_2023",
+    authors="Otto M, Kropp Y, Jaeger E and others",
+    year=2023,
+    title="Inspiration-synchronised mesh for prolonged iloprost, bench",
+    journal="Pharmaceutics 15(8):2080",
+)
+REILLY_2024 = Source(
+    key="REILLY_2024",
+    authors="Reilly L, Mac Giolla Eain M, Murphy S, O'Sullivan A and others",
+    year=2024,
+    title="Respiratory circuit set-up and parameters, bench",
+    journal="Frontiers in Medicine 10:1307301",
+    address="doi.org/10.3389/fmed.2023.1307301",
+)
+SENSOR_NOTICE_2024 = Source(
+    key="SENSOR_NOTICE_2024",
+    authors="US Food and Drug Administration, as told by two trade journals",
+    year=2024,
+    title="Internal flow sensors of portable ventilators fouled by in-line aerosol",
+    journal="device correction, November 2024",
+)
+THOMAS_1993 = Source(
+    key="THOMAS_1993",
+    authors="Thomas SHL, O'Doherty MJ, Fidler HM, Page CJ, Treacher DF, Nunan TO",
+    year=1993,
+    title="Pulmonary deposition of a nebulised aerosol during ventilation",
+    journal="Thorax 48:154",
+    address="thorax.bmj.com/content/48/2/154",
+)
+WAN_2014 = Source(
+    key="WAN_2014",
+    authors="Wan GH, Lin HL, Fink JB and others",
+    year=2014,
+    title="Nebulization modes in pediatric and adult mechanical ventilators",
+    journal="Respiratory Care 59(10):1494",
+    address="doi.org/10.4187/respcare.02999",
+)
