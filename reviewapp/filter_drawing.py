@@ -23,7 +23,7 @@ from reviewapp.svg import (
 )
 
 SMALL = (280.0, 168.0)
-LARGE = (1180.0, 360.0)
+LARGE = (960.0, 360.0)
 _SEGMENT_COLUMNS = [
     "from_h",
     "to_h",
@@ -83,11 +83,11 @@ def one_filter_svg(review: Filters, one: OneFilter, colours: Colours) -> str:
         columns=_SEGMENT_COLUMNS,
     )
     width, height = LARGE
-    frame = (64.0, 14.0, width - 60.0, height - 74.0)
+    frame = (70.0, 14.0, width - 76.0, height - 74.0)
     parts = [
         hatching(f"h-{_safe(filter_id)}", colours),
         *_plot(one.facts, one.readings, segments, review, frame, colours, None, True),
-        *_share_bar(one.facts, (width - 34, 14.0, 18.0, height - 88.0), colours, True),
+        *_share_bar(one.facts, (width - 44, 14.0, 18.0, height - 88.0), colours, True),
         *_treatment_ticks(one, review, frame, height, colours),
     ]
     return drawing(width, height, one.sentence, parts)
@@ -165,7 +165,7 @@ def _plot(
     def y(value: float) -> float:
         return bottom - min(value, high) / high * (bottom - up)
 
-    size = 11 if large else 9
+    size = 12 if large else 11
     limit, near = review.limit_cmh2o_per_lps, review.near_cmh2o_per_lps
     parts = [
         line(left, bottom, right, bottom, colours["lost"]),
@@ -256,7 +256,7 @@ def _segments(
             parts.append(line(at, up, at, bottom, colours["unknown"], 1.4, "3 3"))
             words = row["begins_with"] if large else "change?"
             parts.append(
-                text(at + 3, bottom - 4, words, colours["unknown"], 11 if large else 9)
+                text(at + 3, bottom - 4, words, colours["unknown"], 12 if large else 11)
             )
     return parts
 
@@ -361,7 +361,7 @@ def _share_bar(
             )
         )
         parts.append(
-            text(x + width, y + height + 27, "to aerosol", colours["faint"], 10, "end")
+            text(x + width, y + height + 27, "to aerosol", colours["faint"], 11, "end")
         )
     return parts
 
@@ -377,7 +377,7 @@ def _treatment_ticks(
     used = one.readings.dropna(subset=["resistance_cmh2o_per_lps"])
     _, end = _reach(one.facts, used)
     y = height - 22
-    parts = [text(left - 8, y + 4, "treatments", colours["faint"], 10, "end")]
+    parts = [text(left - 8, y + 4, "treatments", colours["faint"], 11, "end")]
     for row in one.treatments.to_dict("records"):
         at = left + max(row["hours_h"], 0) / max(end, 1e-9) * (right - left)
         if at > right:

@@ -24,15 +24,15 @@ from reviewapp.svg import (
     to_look_at,
 )
 
-WIDTH, LEFT, RIGHT = 1180.0, 128.0, 18.0
+WIDTH, LEFT, RIGHT = 960.0, 138.0, 12.0
 TOP = 30.0
 LANES = (
-    ("treatments", 40.0),
-    ("filters", 34.0),
-    ("resistance", 62.0),
+    ("treatments", 52.0),
+    ("filters", 38.0),
+    ("resistance", 68.0),
     ("volume ratio", 92.0),
     ("checks", 34.0),
-    ("events", 46.0),
+    ("events", 50.0),
 )
 HATCH = "unsaid"
 
@@ -144,8 +144,16 @@ def _frame(
         )
         shown = pd.Timestamp(moment).tz_localize("UTC").tz_convert(zone)
         label = f"{shown:%d %b}" if shown.hour == 0 else f"{shown:%H:%M}"
+        edge = x(moment) > WIDTH - 24
         parts.append(
-            text(x(moment), bottom + 15, label, colours["faint"], 11, "middle")
+            text(
+                WIDTH if edge else x(moment),
+                bottom + 15,
+                label,
+                colours["faint"],
+                11,
+                "end" if edge else "middle",
+            )
         )
     parts.append(text(4, bottom + 15, "site time", colours["faint"], 11))
     return parts
@@ -171,7 +179,7 @@ def _treatments(
     incident: Incident, x: Callable[[Any], float], top: float, colours: Colours
 ) -> list[str]:
     """Three rows in one lane, so that marks of one kind stand in line."""
-    rows = {"absent": top + 9, "unknown": top + 20, "present": top + 31}
+    rows = {"absent": top + 11, "unknown": top + 26, "present": top + 41}
     parts = []
     for row in incident.treatments.to_dict("records"):
         state = row["filter_state"]
@@ -188,7 +196,7 @@ def _treatments(
             parts.append(not_said(at, y, colours, HATCH, words, 4))
     labels = (("absent", "fired"), ("unknown", "unknown"), ("present", "aerosol"))
     for state, colour in labels:
-        parts.append(text(LEFT - 6, rows[state] + 3, state, colours[colour], 9, "end"))
+        parts.append(text(LEFT - 6, rows[state] + 4, state, colours[colour], 11, "end"))
     return parts
 
 
@@ -205,15 +213,15 @@ def _filters(
         left = x(max(row["installed_at"], start))
         ended = end if pd.isna(row["removed_at"]) else row["removed_at"]
         right = x(min(ended, end))
-        y = top + 7 + (number % 2) * 12
+        y = top + 5 + (number % 2) * 15
         words = f"filter {row['filter_id']}"
         parts.append(
             rectangle(
-                left, y, max(right - left - 1, 2), 8, colours["lost"], words=words
+                left, y, max(right - left - 1, 2), 12, colours["lost"], words=words
             )
         )
         if right - left > 60:
-            parts.append(text(left + 4, y + 7.5, row["filter_id"], colours["ink"], 9))
+            parts.append(text(left + 4, y + 10, row["filter_id"], colours["ink"], 11))
     return parts
 
 
@@ -226,21 +234,21 @@ def _readings(
 ) -> list[str]:
     values = incident.readings["resistance_cmh2o_per_lps"]
     high = max(limit * 1.15, float(values.max()) if values.notna().any() else 0.0)
-    bottom = top + 56
+    bottom = top + 62
 
     def y(value: float) -> float:
-        return bottom - value / high * 50
+        return bottom - value / high * 56
 
     parts = [
         line(LEFT, y(limit), WIDTH - RIGHT, y(limit), colours["fired"], 0.9, "5 3"),
-        text(LEFT - 6, y(limit) + 3, f"limit {limit:g}", colours["fired"], 9, "end"),
-        text(4, top + 40, "cmH2O/(L/s)", colours["faint"], 9),
+        text(LEFT - 6, y(limit) + 3, f"limit {limit:g}", colours["fired"], 11, "end"),
+        text(4, top + 42, "cmH2O/(L/s)", colours["faint"], 11),
     ]
     for row in incident.readings.to_dict("records"):
         at, value = x(row["read_at"]), row["resistance_cmh2o_per_lps"]
         if value is None or pd.isna(value):
             words = f"{row['reading_id']} not used: {row['doubt']}"
-            parts.append(text(at, bottom, "×", colours["unknown"], 10, "middle"))
+            parts.append(text(at, bottom, "×", colours["unknown"], 11, "middle"))
             parts.append(circle(at, bottom - 3, 4, "transparent", words=words))
         else:
             words = f"{row['reading_id']}, filter {row['filter_id']}: {value:.2f}"
@@ -259,7 +267,7 @@ def _ratio(
     checks = incident.checks
     checks = checks[(checks["checked_at"] >= start) & (checks["checked_at"] <= end)]
     known = checks.dropna(subset=["ratio"])
-    parts = [text(4, top + 40, "exhaled / inspired", colours["faint"], 9)]
+    parts = [text(4, top + 42, "exhaled / inspired", colours["faint"], 11)]
     if known.empty:
         return [
             *parts,
@@ -293,7 +301,7 @@ def _ratio(
         )
     for value in (low + 0.01, high - 0.01):
         parts.append(
-            text(LEFT - 6, y(value) + 3, f"{value:.2f}", colours["faint"], 9, "end")
+            text(LEFT - 6, y(value) + 3, f"{value:.2f}", colours["faint"], 11, "end")
         )
     started = incident.drift_started_at
     if started is not None and started >= start:
@@ -356,11 +364,11 @@ def _events(
         mark = to_look_at if urgent else in_order
         parts.append(mark(at, y, colours, words, 3.5))
         label = str(row["kind"] or "event").replace("_", " ")
-        wide = 5.6 * len(label)
+        wide = 6.2 * len(label)
         left = min(at - wide / 2, WIDTH - RIGHT - wide)
         for height, taken in free.items():
             if left > taken + 6:
-                parts.append(text(left, top + height, label, colours["ink"], 10))
+                parts.append(text(left, top + height, label, colours["ink"], 11))
                 free[height] = left + wide
                 break
     return parts
