@@ -5,6 +5,8 @@ from __future__ import annotations
 import importlib
 import pkgutil
 
+# The works first: loading them later would hide ``sources`` below behind the file.
+from engine.evidence import sources as works
 from engine.evidence.shape import Number, Source
 
 
@@ -20,8 +22,7 @@ def numbers() -> dict[str, Number]:
 
 def sources() -> dict[str, Source]:
     """Every source by its key."""
-    module = importlib.import_module(f"{__name__}.sources")
-    return {v.key: v for v in vars(module).values() if isinstance(v, Source)}
+    return {v.key: v for v in vars(works).values() if isinstance(v, Source)}
 
 
 def _topics() -> list:
