@@ -30,6 +30,7 @@ from engine.stats.drift import drift_of
 from engine.stats.filter_life import life_of
 
 OUT = Path(__file__).parents[2] / "engine" / "evidence" / "detection.csv"
+POLICY = load_policy("common_practice")
 FLAGGED = {"rising", "near_limit", "over_limit"}
 FILTERS_EACH = 4  # of every sort, in each department
 DAY_H = 24.0
@@ -54,7 +55,7 @@ def main(departments: int = 500) -> None:
 
 
 def filters(rng: np.random.Generator, tally: Counter[str], seed: int) -> None:
-    limits = load_policy().filters
+    limits = POLICY.filters
 
     def life(hours, resistance):
         return life_of(
@@ -146,7 +147,7 @@ def read(rng, course, span_h, scatter) -> tuple[np.ndarray, np.ndarray]:
 
 def sensors(rng: np.random.Generator, tally: Counter[str]) -> None:
     """Four ventilators: level, drifting, level with a calibration, wild checks."""
-    rules = load_policy().sensors
+    rules = POLICY.sensors
     every = rng.choice([12.0, 24.0, 48.0, 72.0])
     for kind in ("level", "drifting", "calibrated", "wild"):
         hours = np.arange(0, 150 * DAY_H, every)
@@ -228,7 +229,7 @@ def replayed(log):
     except ImportError:
         sys.path.insert(0, str(Path(__file__).parents[1] / "engine" / "reviews"))
         from conftest import by_hand as replay
-    return replay(log, load_policy())
+    return replay(log, POLICY)
 
 
 # question, right, of, target, how the target is met
