@@ -73,6 +73,7 @@ def matched_pairs(b: int, c: int, cover: float | None = None) -> Ratio:
         high=high / (1 - high) if high < 1 else math.inf,
         p=min(1.0, 2 * float(binom.cdf(min(b, c), m, 0.5))),
         p_one_sided=float(binom.sf(b - 1, m, 0.5)),
+        p_less=float(binom.cdf(b, m, 0.5)),
         smallest_p=smallest_matched_p(m),
         statistic=(b - c) ** 2 / m,
         statistic_corrected=max(abs(b - c) - 1, 0) ** 2 / m,

@@ -27,7 +27,8 @@ class Ratio:
     low: float
     high: float
     p: float
-    p_one_sided: float = math.nan
+    p_one_sided: float = math.nan  # of a ratio as high as this or higher
+    p_less: float = math.nan  # of a ratio as low as this or lower
     smallest_p: float = 0.0
     statistic: float = math.nan
     statistic_corrected: float = math.nan
@@ -87,6 +88,7 @@ def exact_common_odds_ratio(
         high=_exact_end(log_weights, support, seen, tail, upper=True),
         p=_two_sided(chances, support, seen),
         p_one_sided=float(chances[support >= seen].sum()),
+        p_less=float(chances[support <= seen].sum()),
         smallest_p=float(chances.min()),
         sets_used=len(kept),
         sets_dropped=dropped,

@@ -133,6 +133,23 @@ def test_all_signs_are_tried_where_they_are_few():
     assert sign_flip_p([1.0, 2, 1, 3, 1, 2]) == (2 / 64, 64, True)
 
 
+def test_darwins_plants_over_all_signs():
+    """Fisher 1935, section 21 (from memory): 863 of 32,768 on one side, p .0527."""
+    eighths = [49, -67, 8, 16, 6, 23, 28, 41, 14, 29, 56, 24, 75, 60, -48]
+    p, tried, whole = sign_flip_p(eighths)
+    assert whole
+    assert tried == 32_768
+    assert round(p * tried) == 2 * 863
+
+
+def test_convictions_of_twins_both_ways():
+    """Fisher 1962 (from memory): 2, 15 / 10, 3; p .0005367, less .0004652."""
+    done = odds_ratio([[2, 15], [10, 3]])
+    assert done.p == pytest.approx(0.0005367, abs=5e-8)
+    assert done.p_less == pytest.approx(0.0004652, abs=5e-8)
+    assert done.ratio == pytest.approx(0.04693661, abs=5e-9)
+
+
 def test_many_differences_are_sampled_with_a_seed():
     values = RNG.normal(0.3, 1, 40)
     p, tried, whole = sign_flip_p(values, seed=1)
