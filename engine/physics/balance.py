@@ -9,7 +9,7 @@ from engine.columns import FRACTIONS
 from engine.physics.bands import Band, bands_of, joined
 from engine.physics.chunks import in_chunks
 from engine.physics.constants import FITTED, Constants
-from engine.physics.estimate import Estimate, estimate
+from engine.physics.estimate import Estimate, airways_of, estimate
 from engine.physics.setup import ASSUMPTIONS, REFUSALS, Setup, setup_of
 from engine.physics.sites import alternatives
 from engine.physics.tries import humidity_ratio, other_setups, with_other_humidity
@@ -59,16 +59,16 @@ def estimated(
     setup: Setup, constants: Constants = FITTED
 ) -> tuple[Estimate, dict[str, Band]]:
     """The estimate and its bands for treatments that are not refused."""
-    found = estimate(setup, constants)
+    airways = airways_of(setup, constants)
+    found = estimate(setup, constants, airways)
     bands = _with_humidity(setup, found, constants)
-    for index, other in other_setups(setup):
-        theirs = _with_humidity(other, estimate(other, constants), constants)
-        for name, band in theirs.items():
+    for index, other, same_airways in other_setups(setup):
+        past_wye = airways.pick(index) if same_airways else None
+        theirs = _with_humidity(other, estimate(other, constants, past_wye), constants)
+        for name, (low, high) in theirs.items():
             mine = bands[name]
-            here = joined(
-                (mine[0][index], mine[1][index]), band, np.ones(len(index), bool)
-            )
-            mine[0][index], mine[1][index] = here
+            np.minimum.at(mine[0], index, low)
+            np.maximum.at(mine[1], index, high)
     return found, bands
 
 

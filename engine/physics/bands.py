@@ -9,7 +9,7 @@ band of the cause and the range of the step between.
 from __future__ import annotations
 
 import numpy as np
-from scipy.special import expit, logit, ndtri
+from scipy.special import ndtri
 
 from engine.evidence import calibration, circuit, filter_capture, lung
 from engine.physics.estimate import Estimate
@@ -35,29 +35,37 @@ def spread_logit(setup: Setup) -> np.ndarray:
 
 
 def logit_band(frac: np.ndarray, spread: np.ndarray | float) -> Band:
-    """Low and high of a fraction; 0 and 1 have no band."""
-    middle = logit(np.clip(frac, 0.0, 1.0))
-    reach = Z * np.asarray(spread)
-    return expit(middle - reach), expit(middle + reach)
+    """Low and high of a fraction; 0 and 1 have no band.
+
+    The band of the logit, written for odds: both ends of it are the odds times or over
+    the same factor.
+    """
+    return _odds_band(frac, np.exp(Z * np.asarray(spread)))
+
+
+def _odds_band(frac: np.ndarray, factor: np.ndarray) -> Band:
+    other = 1 - frac
+    raised = frac * factor
+    return frac / (frac + other * factor), raised / (raised + other)
 
 
 def bands_of(setup: Setup, found: Estimate) -> dict[str, Band]:
     """Low and high of every place and of delivered, swept and reached_sensor."""
-    spread = spread_logit(setup)
+    factor = np.exp(Z * spread_logit(setup))
     places = found.places
     bands = {
-        name: logit_band(frac, spread)
+        name: _odds_band(frac, factor)
         for name, frac in places.items()
         if name not in (*_LUNG, *_FILTER_SIDE)
     }
     bands["generator_residual"] = logit_band(
         places["generator_residual"], float(circuit.RESIDUAL_SPREAD_LOGIT)
     )
-    bands["delivered"] = logit_band(found.delivered, spread)
-    bands["swept_past_wye"] = logit_band(found.swept, spread)
+    bands["delivered"] = _odds_band(found.delivered, factor)
+    bands["swept_past_wye"] = _odds_band(found.swept, factor)
     for name in _LUNG:
         bands[name] = _lung_band(places[name], found.delivered, bands["delivered"])
-    bands |= _filter_side(setup, found.load, logit_band(found.load, spread))
+    bands |= _filter_side(setup, found.load, _odds_band(found.load, factor))
     return bands
 
 

@@ -10,7 +10,7 @@ import numpy as np
 
 from engine.batch import Batch, size
 
-CHUNK_ROWS = 4096
+CHUNK_ROWS = 16384
 
 
 def in_chunks(

@@ -7,9 +7,9 @@ numbers or arrays that broadcast; results have their common shape.
 from __future__ import annotations
 
 from functools import cache
+from typing import TypeAlias
 
 import numpy as np
-from numpy.typing import ArrayLike
 from scipy.special import ndtr
 
 from engine.evidence import droplet
@@ -18,6 +18,8 @@ from engine.physics.air import (
     coefficients,
     mean_free_path_um,
 )
+
+Values: TypeAlias = np.ndarray | float
 
 M_PER_UM = 1e-6
 
@@ -37,8 +39,8 @@ DEFAULT_SLIP = "allen_raabe1985_solid"
 
 
 def slip_correction(
-    diameter_um: ArrayLike,
-    free_path_um: ArrayLike,
+    diameter_um: Values,
+    free_path_um: Values,
     law: str = DEFAULT_SLIP,
 ) -> np.ndarray:
     """How much faster a small droplet moves than Stokes' law says (1 or more).
@@ -48,34 +50,34 @@ def slip_correction(
     Raises   ValueError for a law nobody has written down.
     Checked  engine/evidence/published/physics_values.csv
     """
-    d = np.asarray(diameter_um, float)
+    d = np.asarray(diameter_um)
     if law in _BY_KNUDSEN:
         a, b, c = coefficients(_BY_KNUDSEN[law])
-        knudsen = 2 * np.asarray(free_path_um) / d
+        knudsen = 2 * free_path_um / d
         return 1 + knudsen * (a + b * np.exp(-c / knudsen))
     if law in _BY_FREE_PATH:
         a, b, c = coefficients(_BY_FREE_PATH[law])
-        ratio = d / np.asarray(free_path_um)
+        ratio = d / free_path_um
         return 1 + (a + b * np.exp(-c * ratio)) / ratio
     raise ValueError(f"slip law must be one of {', '.join(SLIP_LAWS)}; got {law}")
 
 
 def relaxation_time_s(
-    diameter_um: ArrayLike,
-    slip: ArrayLike,
-    viscosity_pa_s: ArrayLike,
-    density_kg_per_m3: ArrayLike = droplet.WATER_KG_PER_M3.value,
+    diameter_um: Values,
+    slip: Values,
+    viscosity_pa_s: Values,
+    density_kg_per_m3: Values = float(droplet.WATER_KG_PER_M3),
 ) -> np.ndarray:
     """Time a droplet takes to follow a change of the gas (Stokes drag)."""
-    d_m = np.asarray(diameter_um, float) * M_PER_UM
-    return np.asarray(density_kg_per_m3) * d_m**2 * slip / (18 * viscosity_pa_s)
+    d_m = np.asarray(diameter_um) * M_PER_UM
+    return density_kg_per_m3 * d_m**2 * slip / (18 * viscosity_pa_s)
 
 
 def settling_velocity_m_per_s(
-    diameter_um: ArrayLike,
-    slip: ArrayLike,
-    viscosity_pa_s: ArrayLike,
-    density_kg_per_m3: ArrayLike = droplet.WATER_KG_PER_M3.value,
+    diameter_um: Values,
+    slip: Values,
+    viscosity_pa_s: Values,
+    density_kg_per_m3: Values = float(droplet.WATER_KG_PER_M3),
 ) -> np.ndarray:
     """Speed at which a droplet falls in still gas.
 
@@ -86,28 +88,26 @@ def settling_velocity_m_per_s(
     return tau_s * float(droplet.GRAVITY_M_PER_S2)
 
 
-def stopping_distance_m(
-    relaxation_s: ArrayLike, velocity_m_per_s: ArrayLike
-) -> np.ndarray:
+def stopping_distance_m(relaxation_s: Values, velocity_m_per_s: Values) -> np.ndarray:
     """How far a droplet flies on when the gas around it stops."""
-    return np.asarray(relaxation_s) * np.asarray(velocity_m_per_s)
+    return np.asarray(relaxation_s * velocity_m_per_s)
 
 
 def stokes_number(
-    relaxation_s: ArrayLike, velocity_m_per_s: ArrayLike, diameter_m: ArrayLike
+    relaxation_s: Values, velocity_m_per_s: Values, diameter_m: Values
 ) -> np.ndarray:
     """Relaxation time x velocity / tube diameter.
 
     Some authors (PUI_1987 in turbulent flow) use the tube's radius: twice this.
     """
-    return stopping_distance_m(relaxation_s, velocity_m_per_s) / np.asarray(diameter_m)
+    return stopping_distance_m(relaxation_s, velocity_m_per_s) / diameter_m
 
 
 def diffusion_coefficient_m2_per_s(
-    diameter_um: ArrayLike,
-    slip: ArrayLike,
-    viscosity_pa_s: ArrayLike,
-    temperature_k: ArrayLike,
+    diameter_um: Values,
+    slip: Values,
+    viscosity_pa_s: Values,
+    temperature_k: Values,
 ) -> np.ndarray:
     """How fast a droplet spreads by Brownian motion (Stokes and Einstein)."""
     thermal_j = float(droplet.BOLTZMANN_J_PER_K) * np.asarray(temperature_k)
@@ -116,10 +116,10 @@ def diffusion_coefficient_m2_per_s(
 
 
 def aerodynamic_diameter_um(
-    diameter_um: ArrayLike,
-    density_g_per_cm3: ArrayLike,
-    shape_factor: ArrayLike,
-    free_path_um: ArrayLike,
+    diameter_um: Values,
+    density_g_per_cm3: Values,
+    shape_factor: Values,
+    free_path_um: Values,
     law: str = DEFAULT_SLIP,
 ) -> np.ndarray:
     """Diameter of the water sphere that falls as fast as this particle.
@@ -134,10 +134,10 @@ def aerodynamic_diameter_um(
 
 
 def particle_diameter_um(
-    aerodynamic_um: ArrayLike,
-    density_g_per_cm3: ArrayLike,
-    shape_factor: ArrayLike,
-    free_path_um: ArrayLike,
+    aerodynamic_um: Values,
+    density_g_per_cm3: Values,
+    shape_factor: Values,
+    free_path_um: Values,
     law: str = DEFAULT_SLIP,
 ) -> np.ndarray:
     """The other way round: the particle behind an aerodynamic diameter."""
@@ -148,7 +148,7 @@ def particle_diameter_um(
 
 
 def _diameter_falling_like(
-    wanted: np.ndarray, free_path_um: ArrayLike, law: str
+    wanted: np.ndarray, free_path_um: Values, law: str
 ) -> np.ndarray:
     """Solves d^2 slip(d) = wanted; the fixed point contracts at every size."""
     d = np.sqrt(wanted)
@@ -172,7 +172,7 @@ def size_weights(n: int = int(droplet.SIZE_NODES_COUNT)) -> np.ndarray:
 
 
 def size_nodes_um(
-    mmad_um: ArrayLike, gsd: ArrayLike, n: int = int(droplet.SIZE_NODES_COUNT)
+    mmad_um: Values, gsd: Values, n: int = int(droplet.SIZE_NODES_COUNT)
 ) -> np.ndarray:
     """The n sizes that stand for a lognormal aerosol (Gauss-Hermite in ln d).
 
@@ -184,7 +184,7 @@ def size_nodes_um(
 
 
 def lognormal_between_frac(
-    mmad_um: ArrayLike, gsd: ArrayLike, from_um: ArrayLike, to_um: ArrayLike
+    mmad_um: Values, gsd: Values, from_um: Values, to_um: Values
 ) -> np.ndarray:
     """Share of a lognormal mass between two sizes; from 0 and to infinity allowed."""
     with np.errstate(divide="ignore"):
@@ -193,19 +193,17 @@ def lognormal_between_frac(
     return ndtr(high) - ndtr(low)
 
 
-def count_median_um(mass_median_um: ArrayLike, gsd: ArrayLike) -> np.ndarray:
+def count_median_um(mass_median_um: Values, gsd: Values) -> np.ndarray:
     """Median by count of an aerosol whose median by mass is given (Hatch-Choate)."""
     return np.asarray(mass_median_um) * np.exp(-3 * np.log(gsd) ** 2)
 
 
-def sauter_mean_um(mass_median_um: ArrayLike, gsd: ArrayLike) -> np.ndarray:
+def sauter_mean_um(mass_median_um: Values, gsd: Values) -> np.ndarray:
     """Volume over surface mean of a lognormal aerosol (Hatch-Choate)."""
     return np.asarray(mass_median_um) * np.exp(-0.5 * np.log(gsd) ** 2)
 
 
-def mean_power_um(
-    mass_median_um: ArrayLike, gsd: ArrayLike, power: ArrayLike
-) -> np.ndarray:
+def mean_power_um(mass_median_um: Values, gsd: Values, power: Values) -> np.ndarray:
     """Mean over the mass of diameter to a power (Hatch-Choate)."""
     p = np.asarray(power, float)
     return np.asarray(mass_median_um) ** p * np.exp(p**2 * np.log(gsd) ** 2 / 2)
@@ -222,7 +220,7 @@ def gas_state(temperature_k: float) -> tuple[float, float]:
     )
 
 
-def droplet_relaxation_s(diameter_um: ArrayLike, temperature_k: float) -> np.ndarray:
+def droplet_relaxation_s(diameter_um: Values, temperature_k: float) -> np.ndarray:
     """Relaxation time of water droplets in gas of this temperature."""
     viscosity_pa_s, free_path_um = gas_state(temperature_k)
     slip = slip_correction(diameter_um, free_path_um)

@@ -17,8 +17,10 @@ from engine.physics.filter import hme_capture_frac, penetration_frac
 from engine.physics.lung import SUBJECTS, Breath, Subject, intubated_deposition
 from engine.physics.setup import LIMB_ML_PER_CM, Setup
 from engine.physics.sizes import (
+    FAST,
     LPM_PER_ML_PER_S,
     Sized,
+    column,
     expiratory_ml_per_s,
     inspiratory_ml_per_s,
     sized_of,
@@ -26,7 +28,7 @@ from engine.physics.sizes import (
 )
 from engine.physics.split import at_wye, passes_chamber
 
-WEIGHTS = size_weights()
+WEIGHTS = size_weights().astype(FAST)
 _AIRWAY_SIDE = code_of("site", "airway_side")
 _EXPIRATORY = code_of("site", "expiratory_limb")
 
@@ -48,45 +50,77 @@ class Estimate:
     passed: np.ndarray
 
 
-def estimate(setup: Setup, constants: Constants) -> Estimate:
-    """The balance of each treatment as it is set up."""
-    sized = sized_of(setup, constants)
-    emitted = constants.emitted_frac(setup.generator, setup.is_synchronised)
-    survives = way_survival_frac(setup, constants)
-    split = at_wye(setup, sized, constants)
-    output = emitted * survives
-    inhaled = split.inhaled * WEIGHTS * output[:, None]
-    swept = split.swept * WEIGHTS * output[:, None]
+@dataclass(frozen=True, eq=False)
+class Airways:
+    """What each size meets past the Y, wherever the generator sits; shares (n, k).
 
-    held = hme_on_the_way_in_frac(setup)[:, None]
-    back = _hme_on_the_way_out_frac(setup)[:, None]
+    ``tube_out`` gets back through the tube; the other two are of what left its tip.
+    """
+
+    sized: Sized
+    tube_out: np.ndarray
+    tracheobronchial: np.ndarray
+    alveolar: np.ndarray
+
+    def pick(self, index: np.ndarray) -> Airways:
+        """The same for some of the treatments."""
+        return Airways(
+            self.sized.pick(index),
+            self.tube_out[index],
+            self.tracheobronchial[index],
+            self.alveolar[index],
+        )
+
+
+def airways_of(setup: Setup, constants: Constants) -> Airways:
+    """Sizes, tube and lung of each treatment; bias flow and site play no part."""
+    sized = sized_of(setup, constants)
+    back = tube_passed(setup, sized.relaxation_s, expiratory_ml_per_s(setup))
+    return Airways(sized, back, *_lung(setup, sized))
+
+
+def estimate(
+    setup: Setup, constants: Constants, airways: Airways | None = None
+) -> Estimate:
+    """The balance of each treatment as it is set up."""
+    if airways is None:
+        airways = airways_of(setup, constants)
+    sized = airways.sized
+    emitted = constants.emitted_frac(setup.generator, setup.is_synchronised)
+    output = emitted * way_survival_frac(setup, constants)
+    split = at_wye(setup, sized, constants)
+    dose = column(output) * WEIGHTS
+    inhaled = split.inhaled * dose
+    swept = split.swept * dose
+
+    held = column(hme_on_the_way_in_frac(setup))
+    back = column(hme_on_the_way_out_frac(setup))
+    swept_in_hme = np.where(column(setup.site == _AIRWAY_SIDE) > 0, back, 0)
     reaches_tube = inhaled * (1 - held)
     delivered = reaches_tube * sized.tube_in
-    tracheobronchial, alveolar, retained = _lung(setup, sized)
-    comes_back = delivered * (1 - retained)
-    tube_out = tube_passed(setup, sized.relaxation_s, expiratory_ml_per_s(setup))
-    exhaled = comes_back * tube_out * (1 - back)
-    swept_in_hme = np.where(setup.site == _AIRWAY_SIDE, back[:, 0], 0.0)[:, None]
-
-    survives_limb = _expiratory_limb_frac(setup, sized)
+    tracheobronchial = delivered * airways.tracheobronchial
+    alveolar = delivered * airways.alveolar
+    comes_back = delivered - tracheobronchial - alveolar
+    leaves_tube = comes_back * airways.tube_out
+    exhaled = leaves_tube * (1 - back)
     goes_on = swept * (1 - swept_in_hme)
-    load = _sum(goes_on * survives_limb) + _sum(exhaled * survives_limb)
+    survives = _expiratory_limb_frac(setup, sized)
+    load = _sum((goes_on + exhaled) * survives)
     filtered, sensor, room = _filter_side(setup, load)
     places = {
         "generator_residual": 1 - emitted,
-        "limb": emitted - output + output * (split.settled @ WEIGHTS),
-        "hme": _sum(inhaled * held)
-        + _sum(comes_back * tube_out * back)
-        + _sum(swept * swept_in_hme),
-        "unused_past_wye": _sum(goes_on * (1 - survives_limb)),
-        "tube": _sum(reaches_tube - delivered) + _sum(comes_back * (1 - tube_out)),
-        "tracheobronchial": _sum(delivered * tracheobronchial),
-        "alveolar": _sum(delivered * alveolar),
-        "expiratory_limb": _sum(exhaled * (1 - survives_limb)),
+        "hme": _sum(inhaled * held + leaves_tube * back + swept * swept_in_hme),
+        "unused_past_wye": _sum(goes_on * (1 - survives)),
+        "tube": _sum(reaches_tube - delivered + comes_back - leaves_tube),
+        "tracheobronchial": _sum(tracheobronchial),
+        "alveolar": _sum(alveolar),
+        "expiratory_limb": _sum(exhaled * (1 - survives)),
         "filter": filtered,
         "sensor_side": sensor,
         "room": room,
     }
+    # What did not reach the Y is what is left: size by size it is the settled share.
+    places["limb"] = np.maximum(1 - sum(places.values()), 0.0)
     return Estimate(
         places={name: places[name] for name in FRACTIONS},
         delivered=_sum(delivered),
@@ -103,7 +137,7 @@ def delivered_frac(
     """Only what leaves the tube tip, from the inhaled shares (n, k) of one site."""
     output = constants.emitted_frac(setup.generator, setup.is_synchronised)
     output = output * way_survival_frac(setup, constants)
-    through = (inhaled * sized.tube_in) @ WEIGHTS
+    through = _sum(inhaled * sized.tube_in * WEIGHTS)
     return output * (1 - hme_on_the_way_in_frac(setup)) * through
 
 
@@ -135,27 +169,26 @@ def hme_on_the_way_in_frac(setup: Setup) -> np.ndarray:
     return np.where(upstream, hme_capture_frac(setup.is_filter_hme), 0.0)
 
 
-def _hme_on_the_way_out_frac(setup: Setup) -> np.ndarray:
+def hme_on_the_way_out_frac(setup: Setup) -> np.ndarray:
+    """Share an HME takes from whatever comes back through it."""
     return np.where(setup.hme_in_line, hme_capture_frac(setup.is_filter_hme), 0.0)
 
 
-def _lung(setup: Setup, sized: Sized) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-    """Shares of what leaves the tube tip left in larger airways and alveoli, and both.
+def _lung(setup: Setup, sized: Sized) -> tuple[np.ndarray, np.ndarray]:
+    """Shares of what leaves the tube tip left in larger airways and in alveoli.
 
     The dead space was counted at the Y, so the delivery is all in gas that enters.
     """
     breath = Breath(
-        tidal_ml=setup.tidal_ml[:, None],
-        inspiratory_ml_per_s=inspiratory_ml_per_s(setup)[:, None],
-        expiratory_ml_per_s=expiratory_ml_per_s(setup)[:, None],
-        dead_ml=setup.dead_ml[:, None],
-        pause_s=setup.pause_s[:, None],
+        tidal_ml=column(setup.tidal_ml),
+        inspiratory_ml_per_s=column(inspiratory_ml_per_s(setup)),
+        expiratory_ml_per_s=column(expiratory_ml_per_s(setup)),
+        dead_ml=column(setup.dead_ml),
+        pause_s=column(setup.pause_s),
     )
     lungs = intubated_deposition(sized.diameter_um, breath, subject_of(setup))
-    enters = (1 - setup.dead_ml / setup.tidal_ml)[:, None]
-    tracheobronchial = lungs.tracheobronchial / enters
-    alveolar = lungs.alveolar / enters
-    return tracheobronchial, alveolar, tracheobronchial + alveolar
+    enters = column(1 - setup.dead_ml / setup.tidal_ml)
+    return lungs.tracheobronchial / enters, lungs.alveolar / enters
 
 
 _LUNGS = ("male", "10y", "5y")
@@ -172,7 +205,7 @@ def subject_of(setup: Setup) -> Subject:
     """The reference lung of each treatment; fields (n, 1)."""
     index = lung_index(setup)
     fields = zip(*(vars(SUBJECTS[name]).values() for name in _LUNGS), strict=True)
-    return Subject(*(np.array(values, float)[index][:, None] for values in fields))
+    return Subject(*(column(np.array(values, float)[index]) for values in fields))
 
 
 def _expiratory_limb_frac(setup: Setup, sized: Sized) -> np.ndarray:
@@ -185,7 +218,7 @@ def _expiratory_limb_frac(setup: Setup, sized: Sized) -> np.ndarray:
     swept_ml = (setup.bias_ml_per_s + setup.gas_ml_per_s) * setup.expiratory_s
     time_s = limb_ml / (setup.tidal_ml + swept_ml) * cycle_s
     time_s = np.where(setup.is_single_limb, 0.0, time_s)
-    return np.exp(-sized.loss_per_s * time_s[:, None])
+    return np.exp(-sized.loss_per_s * column(time_s))
 
 
 def _filter_side(
@@ -203,4 +236,5 @@ def _filter_side(
 
 
 def _sum(shares: np.ndarray) -> np.ndarray:
-    return shares.sum(axis=-1)
+    """Over the sizes, in double precision from here on."""
+    return shares.sum(axis=-1, dtype=np.float64)

@@ -2,16 +2,19 @@
 
 from __future__ import annotations
 
+from typing import TypeAlias
+
 import numpy as np
-from numpy.typing import ArrayLike
+
+Values: TypeAlias = np.ndarray | float
 
 
 def settled_laminar_frac(
-    settling_m_per_s: ArrayLike,
-    length_m: ArrayLike,
-    velocity_m_per_s: ArrayLike,
-    diameter_m: ArrayLike,
-    slope_deg: ArrayLike = 0.0,
+    settling_m_per_s: Values,
+    length_m: Values,
+    velocity_m_per_s: Values,
+    diameter_m: Values,
+    slope_deg: Values = 0.0,
 ) -> np.ndarray:
     """Fraction settling out of laminar flow through a round tube; exact.
 
@@ -33,11 +36,11 @@ def settled_laminar_frac(
 
 
 def settled_mixed_frac(
-    settling_m_per_s: ArrayLike,
-    length_m: ArrayLike,
-    velocity_m_per_s: ArrayLike,
-    diameter_m: ArrayLike,
-    slope_deg: ArrayLike = 0.0,
+    settling_m_per_s: Values,
+    length_m: Values,
+    velocity_m_per_s: Values,
+    diameter_m: Values,
+    slope_deg: Values = 0.0,
 ) -> np.ndarray:
     """Fraction settling where the flow keeps the gas mixed across the tube.
 
@@ -52,7 +55,7 @@ def settled_mixed_frac(
 
 
 def settled_still_frac(
-    settling_m_per_s: ArrayLike, time_s: ArrayLike, diameter_m: ArrayLike
+    settling_m_per_s: Values, time_s: Values, diameter_m: Values
 ) -> np.ndarray:
     """Fraction settling out of gas that stands still in a horizontal tube.
 
@@ -64,8 +67,6 @@ def settled_still_frac(
     return 1 - 2 / np.pi * (np.arccos(x) - x * np.sqrt(1 - x**2))
 
 
-def settling_rate_per_s(
-    settling_m_per_s: ArrayLike, diameter_m: ArrayLike
-) -> np.ndarray:
+def settling_rate_per_s(settling_m_per_s: Values, diameter_m: Values) -> np.ndarray:
     """Share of the airborne droplets lost each second in a mixed round tube."""
-    return 4 * np.asarray(settling_m_per_s) / (np.pi * np.asarray(diameter_m))
+    return np.asarray(settling_m_per_s) * (4 / np.pi / diameter_m)

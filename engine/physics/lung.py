@@ -144,43 +144,35 @@ def filters(
 ) -> tuple[tuple[np.ndarray, ...], tuple[np.ndarray, ...]]:
     """Efficiency of BB, bb and AI on the way in, and of BB and bb on the way out.
 
-    The two diameters are the same for droplets.
+    The two diameters are the same for droplets. Both ways are worked out at once, on
+    a first axis of two, since size plays the same part in both.
     """
-    diffusion = diffusion_cm2_per_s(thermal_um)
-    _, _, t_alveoli = _times_s(subject, reach, breath.inspiratory_ml_per_s)
-    t_alveoli = t_alveoli + breath.pause_s
+    d_ae, d_th = aerodynamic_um, thermal_um
+    flow = _ways(breath.inspiratory_ml_per_s, breath.expiratory_ml_per_s, d_ae.ndim)
+    diffusion = diffusion_cm2_per_s(d_th)
+    half = 1 + reach.growth / 2
+    t_bb = subject.bronchi_ml * half / flow
+    t_small = subject.bronchioles_ml * half / flow
+    t_alveoli = reach.alveolar_ml / breath.inspiratory_ml_per_s + breath.pause_s
+    bronchi = _both(
+        bronchi_impacted_frac(d_ae, flow, subject),
+        bronchi_diffused_frac(d_th, diffusion, t_bb, subject),
+    )
+    bronchioles = _both(
+        bronchioles_settled_frac(d_ae, t_small),
+        bronchioles_diffused_frac(diffusion, t_small, subject),
+    )
     alveoli = _both(
-        alveoli_settled_frac(aerodynamic_um, t_alveoli, subject),
+        alveoli_settled_frac(d_ae, t_alveoli, subject),
         alveoli_diffused_frac(diffusion, t_alveoli, subject),
     )
-    ways = []
-    for flow, law in (
-        (breath.inspiratory_ml_per_s, lung.BRONCHI_IN_COEF),
-        (breath.expiratory_ml_per_s, lung.BRONCHI_OUT_COEF),
-    ):
-        t_bb, t_small, _ = _times_s(subject, reach, flow)
-        bronchi = _both(
-            bronchi_impacted_frac(aerodynamic_um, flow, subject, law),
-            bronchi_diffused_frac(thermal_um, diffusion, t_bb, subject),
-        )
-        bronchioles = _both(
-            bronchioles_settled_frac(aerodynamic_um, t_small),
-            bronchioles_diffused_frac(diffusion, t_small, subject),
-        )
-        ways.append((bronchi, bronchioles))
-    return (*ways[0], alveoli), ways[1]
+    return (bronchi[0], bronchioles[0], alveoli), (bronchi[1], bronchioles[1])
 
 
-def _times_s(
-    subject: Subject, reach: Reach, flow_ml_per_s: Values
-) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-    """Time the gas spends in BB, bb and AI at this flow."""
-    half = 1 + reach.growth / 2
-    return (
-        subject.bronchi_ml * half / flow_ml_per_s,
-        subject.bronchioles_ml * half / flow_ml_per_s,
-        reach.alveolar_ml / flow_ml_per_s,
-    )
+def _ways(inspiratory: Values, expiratory: Values, ndim: int) -> np.ndarray:
+    """Flow in and out on a first axis, over as many other axes as the sizes have."""
+    flow = np.stack(np.broadcast_arrays(inspiratory, expiratory))
+    return flow.reshape(2, *(1,) * (ndim + 1 - flow.ndim), *flow.shape[1:])
 
 
 def _both(aerodynamic: np.ndarray, thermal: np.ndarray) -> np.ndarray:
@@ -200,31 +192,39 @@ def diffusion_cm2_per_s(thermal_um: np.ndarray) -> np.ndarray:
 
 
 def bronchi_impacted_frac(
-    diameter_um: np.ndarray, flow_ml_per_s: Values, subject: Subject, law: Number
+    diameter_um: np.ndarray, flow_ml_per_s: np.ndarray, subject: Subject
 ) -> np.ndarray:
-    """BB filter by impaction; ``law`` tells inspiration from expiration."""
-    slope, power, scale_power = coefficients(law)
-    per_size = np.asarray(flow_ml_per_s) * subject.trachea_scale**scale_power
-    return -np.expm1(-slope * (diameter_um**2 * per_size) ** power)
+    """BB filter by impaction; the first axis of the flow is in, out."""
+    slope_in, power, scale_power = coefficients(lung.BRONCHI_IN_COEF)
+    slope_out = coefficients(lung.BRONCHI_OUT_COEF)[0]
+    slope = np.where(_is_way_in(flow_ml_per_s), slope_in, slope_out)
+    per_size = slope * (flow_ml_per_s * subject.trachea_scale**scale_power) ** power
+    return 1 - np.exp(
+        -(diameter_um ** (2 * power)) * per_size.astype(diameter_um.dtype)
+    )
+
+
+def _is_way_in(flow: np.ndarray) -> np.ndarray:
+    return np.array([True, False]).reshape(2, *(1,) * (flow.ndim - 1))
 
 
 def bronchi_diffused_frac(
-    thermal_um: np.ndarray, diffusion: np.ndarray, time_s: Values, subject: Subject
+    thermal_um: np.ndarray, diffusion: np.ndarray, time_s: np.ndarray, subject: Subject
 ) -> np.ndarray:
     """BB filter by diffusion, with the factor for turbulence in the first airways."""
     slope, scale_power, power = coefficients(lung.BRONCHI_THERMAL_COEF)
     height, inner, outer, size_power = coefficients(lung.BRONCHI_TURBULENCE_COEF)
     psi = 1 + height * np.exp(-(np.log10(inner + outer / thermal_um**size_power) ** 2))
-    strength = slope * subject.trachea_scale**scale_power
-    return -np.expm1(-strength * psi * (diffusion * time_s) ** power)
+    strength = slope * subject.trachea_scale**scale_power * time_s**power
+    return 1 - np.exp(-strength * (psi * diffusion**power))
 
 
 def bronchioles_settled_frac(diameter_um: np.ndarray, time_s: Values) -> np.ndarray:
     """bb filter by settling; the same both ways."""
     slope, base, time_power, size_power, power = coefficients(lung.BRONCHIOLES_COEF)
     t = np.asarray(time_s)
-    size = diameter_um ** (t**-size_power)
-    return -np.expm1(-slope * ((base + t**time_power) * size) ** power)
+    reach = slope * (base + t**time_power) ** power
+    return 1 - np.exp(-reach * diameter_um ** (power * t**-size_power))
 
 
 def bronchioles_diffused_frac(
@@ -233,7 +233,7 @@ def bronchioles_diffused_frac(
     """bb filter by diffusion; the same both ways."""
     base, slope, scale_power, power = coefficients(lung.BRONCHIOLES_THERMAL_COEF)
     strength = base + slope * subject.bronchiole_scale**scale_power
-    return -np.expm1(-strength * (diffusion * time_s) ** power)
+    return 1 - np.exp(-(strength * time_s**power) * diffusion**power)
 
 
 def alveoli_settled_frac(
@@ -242,7 +242,7 @@ def alveoli_settled_frac(
     """AI filter by settling."""
     slope, scale_power, power = coefficients(lung.ALVEOLI_COEF)
     strength = slope * subject.alveolus_scale**scale_power
-    return -np.expm1(-strength * (diameter_um**2 * time_s) ** power)
+    return 1 - np.exp(-(strength * time_s**power) * diameter_um ** (2 * power))
 
 
 def alveoli_diffused_frac(
@@ -251,7 +251,7 @@ def alveoli_diffused_frac(
     """AI filter by diffusion."""
     base, slope, scale_power, power = coefficients(lung.ALVEOLI_THERMAL_COEF)
     strength = base + slope * subject.alveolus_scale**scale_power
-    return -np.expm1(-strength * (diffusion * time_s) ** power)
+    return 1 - np.exp(-(strength * time_s**power) * diffusion**power)
 
 
 def exhaled_by_slices_frac(

@@ -140,6 +140,15 @@ class Setup:
         return (self.assumed >> assumption & 1).astype(bool)
 
 
+def stacked(setups: list[Setup]) -> Setup:
+    """Several setups as one, one after the other."""
+    names = [f.name for f in fields(Setup) if f.name != "emission"]
+    return Setup(
+        **{name: np.concatenate([getattr(s, name) for s in setups]) for name in names},
+        emission=setups[0].emission,
+    )
+
+
 def setup_of(rows: Batch) -> Setup:
     """What the physics needs of each treatment, with assumptions and refusals."""
     gaps = _Gaps(size(rows))

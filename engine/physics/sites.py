@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
@@ -13,9 +14,9 @@ from engine.physics.bands import logit_band, spread_logit
 from engine.physics.chunks import in_chunks
 from engine.physics.constants import FITTED, Constants
 from engine.physics.estimate import delivered_frac
-from engine.physics.setup import DISTANCE, GENERATORS, Setup, setup_of
-from engine.physics.sizes import sized_of
-from engine.physics.split import at_wye, inhaled_frac
+from engine.physics.setup import DISTANCE, GENERATORS, Setup, setup_of, stacked
+from engine.physics.sizes import Sized, sized_of
+from engine.physics.split import along_limb, at_wye, on_patient_side
 from engine.physics.tries import humidity_ratio, other_setups
 
 # Sites where a generator of each kind can be put; common practice, no source.
@@ -67,16 +68,17 @@ def _alternatives(rows: Batch) -> dict[str, np.ndarray]:
 
 def compared(setup: Setup, constants: Constants = FITTED) -> dict[str, np.ndarray]:
     """The comparison of sites for treatments that are not refused."""
-    mine = _everywhere(setup, constants)
+    sized = sized_of(setup, constants)
+    mine = _everywhere(setup, sized, constants)
     lows, highs = mine.lows.copy(), mine.highs.copy()
     best = _best(mine.points)
     shown = _ratio(mine, best) > float(circuit.SHOWN_DIFFERENCE_RATIO)
-    for index, other in other_setups(setup):
-        theirs = _everywhere(other, constants)
-        lows[:, index] = np.fmin(lows[:, index], theirs.lows)
-        highs[:, index] = np.fmax(highs[:, index], theirs.highs)
+    for index, other, _ in other_setups(setup):
+        theirs = _everywhere(other, sized.pick(index), constants)
+        np.fmin.at(lows, (slice(None), index), theirs.lows)
+        np.fmax.at(highs, (slice(None), index), theirs.highs)
         # A difference that one of the values tried turns round is not shown.
-        shown[index] &= _ratio(theirs, best[index]) > 1
+        np.logical_and.at(shown, index, _ratio(theirs, best[index]) > 1)
     return _told(setup, mine, best, shown, lows, highs)
 
 
@@ -90,25 +92,55 @@ class _Everywhere:
     here: np.ndarray
 
 
-def _everywhere(setup: Setup, constants: Constants) -> _Everywhere:
-    sized = sized_of(setup, constants)
+def _everywhere(setup: Setup, sized: Sized, constants: Constants) -> _Everywhere:
     shape = (len(CHOICE_SITES), len(setup))
     points, lows, highs = (np.full(shape, np.nan) for _ in range(3))
-    for row, site in enumerate(CHOICE_SITES):
-        index = np.flatnonzero(_may_use(setup, site))
-        if len(index) == 0:
-            continue
-        there = _moved(setup, site).pick(index)
-        sizes = sized.pick(index)
-        frac = delivered_frac(
-            there, inhaled_frac(there, sizes, constants), sizes, constants
-        )
+    for row, there, index, inhaled in _inhaled_everywhere(setup, sized, constants):
+        frac = delivered_frac(there, inhaled, sized.pick(index), constants)
         points[row, index] = frac
         lows[row, index], highs[row, index] = _band(there, frac, constants)
-    here = delivered_frac(
-        setup, at_wye(setup, sized, constants).inhaled, sized, constants
-    )
-    return _Everywhere(points, lows, highs, here)
+    return _Everywhere(points, lows, highs, _here(setup, sized, points, constants))
+
+
+_Site = tuple[int, Setup, np.ndarray, np.ndarray]
+
+
+def _inhaled_everywhere(
+    setup: Setup, sized: Sized, constants: Constants
+) -> Iterator[_Site]:
+    """For each site: its row, the treatments there, which they are, what is inhaled.
+
+    All sites along the limb are worked out as one long batch.
+    """
+    moved = []
+    for row, site in enumerate(CHOICE_SITES):
+        index = np.flatnonzero(_may_use(setup, site))
+        moved.append((row, _moved(setup.pick(index), site), index))
+    limb = [place for place in moved if CHOICE_SITES[place[0]] != "airway_side"]
+    arrivals = along_limb(stacked([there for _, there, _ in limb]), constants)
+    start = 0
+    for row, there, index in limb:
+        part = arrivals.pick(slice(start, start + len(index)))
+        start += len(index)
+        yield row, there, index, part.airborne_frac(sized.loss_per_s[index])
+    row, there, index = moved[CHOICE_SITES.index("airway_side")]
+    inhaled = on_patient_side(there, sized.pick(index), constants).inhaled
+    yield row, there, index, inhaled
+
+
+def _here(
+    setup: Setup, sized: Sized, points: np.ndarray, constants: Constants
+) -> np.ndarray:
+    """Delivered where the generator sat, even where it does not belong."""
+    here = np.full(len(setup), np.nan)
+    for row, site in enumerate(CHOICE_SITES):
+        here = np.where(setup.site == code_of("site", site), points[row], here)
+    index = np.flatnonzero(np.isnan(here))
+    if len(index):
+        odd, sizes = setup.pick(index), sized.pick(index)
+        inhaled = at_wye(odd, sizes, constants).inhaled
+        here[index] = delivered_frac(odd, inhaled, sizes, constants)
+    return here
 
 
 def _moved(setup: Setup, site: str) -> Setup:

@@ -16,7 +16,7 @@ from engine.evidence import circuit, device
 from engine.physics import wye
 from engine.physics.constants import Constants
 from engine.physics.setup import LIMB_ML_PER_CM, Setup
-from engine.physics.sizes import Sized
+from engine.physics.sizes import Sized, column
 
 _AIRWAY_SIDE = code_of("site", "airway_side")
 _EXPIRATORY = code_of("site", "expiratory_limb")
@@ -45,7 +45,7 @@ def at_wye(setup: Setup, sized: Sized, constants: Constants) -> AtWye:
     gone = np.ones_like(inhaled)
     airway = setup.site == _AIRWAY_SIDE
     limb = ~airway & (setup.site != _EXPIRATORY)
-    for where, rule in ((limb, _along_limb), (airway, _on_patient_side)):
+    for where, rule in ((limb, _along_limb), (airway, on_patient_side)):
         index = np.flatnonzero(where)
         if len(index):
             part = rule(setup.pick(index), sized.pick(index), constants)
@@ -53,14 +53,9 @@ def at_wye(setup: Setup, sized: Sized, constants: Constants) -> AtWye:
     return AtWye(inhaled, gone)
 
 
-def inhaled_frac(setup: Setup, sized: Sized, constants: Constants) -> np.ndarray:
-    """Only what is inhaled, all treatments at one site: (n, k)."""
-    if setup.site[0] == _AIRWAY_SIDE:
-        return _on_patient_side(setup, sized, constants).inhaled
-    arrivals = wye.dispersed(
-        way_to_wye(setup, constants), cycle(setup), emission(setup)
-    )
-    return arrivals.airborne_frac(sized.loss_per_s)
+def along_limb(setup: Setup, constants: Constants) -> wye.Arrivals:
+    """Only what is inhaled from sites on the inspiratory side, sizes apart."""
+    return wye.dispersed(way_to_wye(setup, constants), cycle(setup), emission(setup))
 
 
 def _along_limb(setup: Setup, sized: Sized, constants: Constants) -> AtWye:
@@ -73,7 +68,7 @@ def _along_limb(setup: Setup, sized: Sized, constants: Constants) -> AtWye:
     )
 
 
-def _on_patient_side(setup: Setup, sized: Sized, constants: Constants) -> AtWye:
+def on_patient_side(setup: Setup, sized: Sized, constants: Constants) -> AtWye:
     to_wye_ml = patient_side_ml(setup)
     output = emission(setup)
     at_once, waits = wye.patient_side(
@@ -90,7 +85,7 @@ def _on_patient_side(setup: Setup, sized: Sized, constants: Constants) -> AtWye:
     kept = waits.airborne_frac(sized.loss_per_s)
     carried_out = 1 - at_once - waits.share
     return AtWye(
-        at_once[:, None] + kept, np.broadcast_to(carried_out[:, None], kept.shape)
+        column(at_once) + kept, np.broadcast_to(column(carried_out), kept.shape)
     )
 
 

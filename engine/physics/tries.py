@@ -23,25 +23,25 @@ from engine.physics.setup import (
 from engine.units import ML_PER_L, S_PER_MIN
 
 
-def other_setups(setup: Setup) -> Iterator[tuple[np.ndarray, Setup]]:
-    """Other ways the treatment may have been set up: which rows, and how.
+def other_setups(setup: Setup) -> Iterator[tuple[np.ndarray, Setup, bool]]:
+    """Other ways the treatment may have been set up.
 
     Bias or leak flow at the other values tried; the HME out where it may have been in.
+    Yields   which rows, some more than once, how they are set up then, and whether
+             tube and lung stay as they are.
     """
-    for gap, flows in (
-        (BIAS, circuit.BIAS_TRIED_COEF),
-        (LEAK, circuit.LEAK_TRIED_COEF),
-    ):
-        index = np.flatnonzero(setup.lacks(gap))
-        if len(index) == 0:
-            continue
-        part = setup.pick(index)
-        for lpm in tried(flows)[1:]:
-            flow = np.full(len(index), lpm * ML_PER_L / S_PER_MIN)
-            yield index, part.but(bias_ml_per_s=flow)
+    flows, index = [], []
+    for gap, lpms in ((BIAS, circuit.BIAS_TRIED_COEF), (LEAK, circuit.LEAK_TRIED_COEF)):
+        lacking = np.flatnonzero(setup.lacks(gap))
+        for lpm in tried(lpms)[1:]:
+            index.append(lacking)
+            flows.append(np.full(len(lacking), lpm * ML_PER_L / S_PER_MIN))
+    rows = np.concatenate(index)
+    if len(rows):
+        yield rows, setup.pick(rows).but(bias_ml_per_s=np.concatenate(flows)), True
     index = np.flatnonzero(setup.lacks(HME))
     if len(index):
-        yield index, without_hme(setup.pick(index))
+        yield index, without_hme(setup.pick(index)), False
 
 
 def without_hme(setup: Setup) -> Setup:

@@ -2,13 +2,17 @@
 
 from __future__ import annotations
 
+import math
+from typing import TypeAlias
+
 import numpy as np
-from numpy.typing import ArrayLike
 
 from engine.evidence import tube
 from engine.physics.air import air_viscosity_pa_s, coefficients
 from engine.physics.droplets import droplet_relaxation_s, stokes_number
 from engine.units import ML_PER_L, S_PER_MIN
+
+Values: TypeAlias = np.ndarray | float
 
 M_PER_MM = 1e-3
 M_PER_CM = 1e-2
@@ -16,7 +20,7 @@ M3_PER_ML = 1e-6
 
 
 def bend_turbulent_frac(
-    stokes: ArrayLike, angle_deg: ArrayLike = tube.BEND_DEG.value
+    stokes: Values, angle_deg: Values = float(tube.BEND_DEG)
 ) -> np.ndarray:
     """Fraction lost in a bend in turbulent flow.
 
@@ -25,12 +29,12 @@ def bend_turbulent_frac(
     Checked  engine/evidence/published/physics_values.csv
     """
     decades, per_deg = coefficients(tube.PUI_TURBULENT_COEF)
-    pui = 2 * np.asarray(stokes)
-    return -np.expm1(-np.log(10) * decades * pui * np.asarray(angle_deg) / per_deg)
+    per_stokes = 2 * decades * math.log(10) * (angle_deg / per_deg)
+    return 1 - np.exp(-per_stokes * np.asarray(stokes))
 
 
 def bend_brockmann_frac(
-    stokes: ArrayLike, angle_deg: ArrayLike = tube.BEND_DEG.value
+    stokes: Values, angle_deg: Values = float(tube.BEND_DEG)
 ) -> np.ndarray:
     """The same turbulent bend with natural exponent and radians; a check.
 
@@ -42,7 +46,7 @@ def bend_brockmann_frac(
 
 
 def bend_laminar_frac(
-    stokes: ArrayLike, angle_deg: ArrayLike = tube.BEND_DEG.value
+    stokes: Values, angle_deg: Values = float(tube.BEND_DEG)
 ) -> np.ndarray:
     """Fraction lost in a bend in laminar flow.
 
@@ -59,7 +63,7 @@ def bend_laminar_frac(
 
 
 def bend_crane_evans_frac(
-    stokes: ArrayLike, angle_deg: ArrayLike = tube.BEND_DEG.value
+    stokes: Values, angle_deg: Values = float(tube.BEND_DEG)
 ) -> np.ndarray:
     """An older laminar form, for comparison only.
 
@@ -68,16 +72,14 @@ def bend_crane_evans_frac(
     return np.clip(np.asarray(stokes) * np.radians(angle_deg), 0.0, 1.0)
 
 
-def friction_velocity_m_per_s(
-    velocity_m_per_s: ArrayLike, reynolds: ArrayLike
-) -> np.ndarray:
+def friction_velocity_m_per_s(velocity_m_per_s: Values, reynolds: Values) -> np.ndarray:
     """Velocity scale of the turbulence at a smooth wall (Blasius)."""
     scale, power = coefficients(tube.FRICTION_COEF)
-    factor = scale * np.asarray(reynolds, float) ** -power
-    return np.asarray(velocity_m_per_s) * np.sqrt(factor / 8)
+    factor = scale * np.asarray(reynolds) ** -power
+    return velocity_m_per_s * np.sqrt(factor / 8)
 
 
-def wall_velocity_liu_agarwal(relaxation_plus: ArrayLike) -> np.ndarray:
+def wall_velocity_liu_agarwal(relaxation_plus: Values) -> np.ndarray:
     """Dimensionless velocity towards the wall; flat for large droplets.
 
     Source   LIU_AGARWAL_1974.
@@ -88,7 +90,7 @@ def wall_velocity_liu_agarwal(relaxation_plus: ArrayLike) -> np.ndarray:
 
 
 def wall_velocity_friedlander_johnstone(
-    relaxation_plus: ArrayLike, velocity_ratio: ArrayLike
+    relaxation_plus: Values, velocity_ratio: Values
 ) -> np.ndarray:
     """The same by the older stopping-distance model; for comparison only.
 
@@ -107,30 +109,30 @@ def wall_velocity_friedlander_johnstone(
 
 
 def reynolds_number(
-    flow_lpm: ArrayLike,
-    tube_mm: ArrayLike,
+    flow_lpm: Values,
+    tube_mm: Values,
     temperature_k: float = float(tube.TUBE_GAS_K),
     density_kg_per_m3: float = float(tube.TUBE_GAS_KG_PER_M3),
 ) -> np.ndarray:
     """Reynolds number of gas in the tube; turbulent well above 2000."""
+    viscosity_pa_s = float(air_viscosity_pa_s(temperature_k))
     diameter_m = np.asarray(tube_mm) * M_PER_MM
-    viscosity_pa_s = air_viscosity_pa_s(temperature_k)
     velocity = mean_velocity_m_per_s(flow_lpm, tube_mm)
-    return density_kg_per_m3 * velocity * diameter_m / viscosity_pa_s
+    return velocity * diameter_m * (density_kg_per_m3 / viscosity_pa_s)
 
 
-def mean_velocity_m_per_s(flow_lpm: ArrayLike, tube_mm: ArrayLike) -> np.ndarray:
+def mean_velocity_m_per_s(flow_lpm: Values, tube_mm: Values) -> np.ndarray:
     """Mean speed of the gas in the tube."""
     area_m2 = np.pi / 4 * (np.asarray(tube_mm) * M_PER_MM) ** 2
     return np.asarray(flow_lpm) * (ML_PER_L / S_PER_MIN * M3_PER_ML) / area_m2
 
 
 def lost_frac(
-    diameter_um: ArrayLike,
-    flow_lpm: ArrayLike,
-    tube_mm: ArrayLike,
-    length_cm: ArrayLike = tube.ADULT_TUBE_CM.value,
-    angle_deg: ArrayLike = tube.BEND_DEG.value,
+    diameter_um: Values,
+    flow_lpm: Values,
+    tube_mm: Values,
+    length_cm: Values = float(tube.ADULT_TUBE_CM),
+    angle_deg: Values = float(tube.BEND_DEG),
     temperature_k: float = float(tube.TUBE_GAS_K),
     density_kg_per_m3: float = float(tube.TUBE_GAS_KG_PER_M3),
 ) -> np.ndarray:
@@ -155,11 +157,11 @@ def lost_frac(
 
 
 def passed_frac(
-    relaxation_s: ArrayLike,
-    flow_lpm: ArrayLike,
-    tube_mm: ArrayLike,
-    length_cm: ArrayLike,
-    angle_deg: ArrayLike = tube.BEND_DEG.value,
+    relaxation_s: Values,
+    flow_lpm: Values,
+    tube_mm: Values,
+    length_cm: Values,
+    angle_deg: Values = float(tube.BEND_DEG),
     temperature_k: float = float(tube.TUBE_GAS_K),
     density_kg_per_m3: float = float(tube.TUBE_GAS_KG_PER_M3),
 ) -> np.ndarray:
@@ -170,7 +172,7 @@ def passed_frac(
     turbulent = turbulent_share(reynolds)
     stokes = stokes_number(relaxation_s, velocity, diameter_m)
     friction = friction_velocity_m_per_s(velocity, reynolds)
-    kinematic = air_viscosity_pa_s(temperature_k) / density_kg_per_m3
+    kinematic = float(air_viscosity_pa_s(temperature_k)) / density_kg_per_m3
     to_wall = friction * wall_velocity_liu_agarwal(
         np.asarray(relaxation_s) * (friction**2 / kinematic)
     )
@@ -182,8 +184,8 @@ def passed_frac(
     return bent_laminar + turbulent * (bent_turbulent * wall - bent_laminar)
 
 
-def turbulent_share(reynolds: ArrayLike) -> np.ndarray:
+def turbulent_share(reynolds: Values) -> np.ndarray:
     """0 in laminar flow, 1 in turbulent flow, linear in ln Re between."""
     low, high = float(tube.LAMINAR_BELOW_RE), float(tube.TURBULENT_ABOVE_RE)
-    share = np.log(np.maximum(reynolds, low) / low) / np.log(high / low)
+    share = np.log(np.maximum(reynolds, low) / low) / math.log(high / low)
     return np.clip(share, 0.0, 1.0)

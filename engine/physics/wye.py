@@ -19,8 +19,10 @@ All of it is ours; the tests repeat it by following parcels of gas one by one.
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
-from typing import TypeAlias
+from dataclasses import dataclass, replace
+from functools import cache
+from itertools import pairwise
+from typing import TypeAlias, TypeVar
 
 import numpy as np
 from scipy.special import ndtri
@@ -32,7 +34,11 @@ Values: TypeAlias = np.ndarray | float
 # gas volume in mL and number of stirred tanks, for each part of the way to the Y
 Parts: TypeAlias = Sequence[tuple[Values, float]]
 
+_Work: TypeAlias = "Callable[[Parts, Cycle, Emission], Arrivals]"
+
 _TINY = 1e-12
+_SMALL_ANGLE = 1e-6
+_LEAST_VARIANCE = 0.01  # of the mean squared: an age known better than that is even
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -109,6 +115,7 @@ class Emission:
     stop_s: Values
 
 
+Record = TypeVar("Record", Cycle, Emission)
 EMISSIONS = ("continuous", "inspiration", "expiration", "puff")
 
 
@@ -136,6 +143,10 @@ class Arrivals:
     mean_s: np.ndarray
     variance_s2: np.ndarray
 
+    def pick(self, index: np.ndarray | slice) -> Arrivals:
+        """The same for some of the treatments."""
+        return Arrivals(*(values[index] for values in vars(self).values()))
+
     def airborne_frac(self, loss_per_s: Values) -> np.ndarray:
         """The share that has not settled on the way.
 
@@ -143,14 +154,13 @@ class Arrivals:
         Holds    ages taken as a gamma distribution of the mean and variance known.
         """
         loss = np.asarray(loss_per_s)
-        wide = loss.ndim > self.share.ndim
-        share, mean_s, variance_s2 = (
-            values[..., None] if wide else values
-            for values in (self.share, self.mean_s, self.variance_s2)
-        )
-        scale_s = np.maximum(variance_s2, _TINY) / np.maximum(mean_s, _TINY)
-        power = np.maximum(mean_s, _TINY) / scale_s
-        return share * np.exp(-power * np.log1p(loss * scale_s))
+        mean_s = np.maximum(self.mean_s, _TINY)
+        scale_s = np.maximum(self.variance_s2 / mean_s, _LEAST_VARIANCE * mean_s)
+        values = (self.share, scale_s, mean_s / scale_s)
+        if loss.ndim > self.share.ndim:  # in the precision the losses come in
+            values = tuple(v.astype(loss.dtype)[..., None] for v in values)
+        share, scale_s, power = values
+        return share * np.exp(-power * np.log(1 + loss * scale_s))
 
 
 def plug_flow(volume_ml: Values, cycle: Cycle, emission: Emission) -> Arrivals:
@@ -159,7 +169,8 @@ def plug_flow(volume_ml: Values, cycle: Cycle, emission: Emission) -> Arrivals:
     Shapes   arrays that broadcast; returns their common shape.
     Checked  engine/evidence/published/wye_values.csv
     """
-    return _pooled(_inhaled(volume_ml, cycle, emission), cycle.patient_share)
+    found = _arrivals(*_moments(_inhaled(volume_ml, cycle, emission)))
+    return replace(found, share=found.share * cycle.patient_share)
 
 
 def mixed_frac(cycle: Cycle) -> np.ndarray:
@@ -175,20 +186,66 @@ def dispersed(parts: Parts, cycle: Cycle, emission: Emission) -> Arrivals:
     Holds    share within 0.01 of parcels of gas followed one by one.
     Checked  engine/evidence/published/wye_values.csv
     """
-    averaged = _averaged(parts, cycle, emission, _inhaled, cycle.patient_share)
-    wide = _spread_ml(parts) > float(wye.WIDE_SPREAD_FRAC) * cycle.cycle_ml
-    if not np.any(wide):
-        return averaged
-    share = np.where(wide, series_frac(parts, cycle, emission), averaged.share)
-    return Arrivals(share, averaged.mean_s, averaged.variance_s2)
+    spread = np.asarray(_spread_ml(parts) / cycle.cycle_ml)
+    falls = np.asarray(cycle.peak_ratio) > 1
+    found = np.zeros((3, len(spread)))
+    for low, high, work in _BY_SPREAD:
+        for falling in (False, True):
+            index = np.flatnonzero(
+                (spread >= low) & (spread < high) & (falls == falling)
+            )
+            if len(index) == 0:
+                continue
+            breath = _picked(cycle, index)
+            if not falling:
+                breath = replace(breath, peak_ratio=1.0)
+            some = [(_at(volume, index), tanks) for volume, tanks in parts]
+            part = work(some, breath, _picked(emission, index))
+            found[:, index] = part.share, part.mean_s, part.variance_s2
+    return Arrivals(*found)
+
+
+def _narrow(nodes: int) -> _Work:
+    """The split averaged over so many volumes."""
+
+    def work(parts: Parts, cycle: Cycle, emission: Emission) -> Arrivals:
+        found = _averaged(parts, cycle, emission, _inhaled, nodes)
+        return replace(found, share=found.share * cycle.patient_share)
+
+    return work
+
+
+def _wide(harmonics: int, nodes: int) -> _Work:
+    """The share from so many harmonics, the age from so many volumes.
+
+    No volumes: where the spread is wide enough to part arrival from output.
+    """
+
+    def work(parts: Parts, cycle: Cycle, emission: Emission) -> Arrivals:
+        share = series_frac(parts, cycle, emission, harmonics)
+        if nodes == 0:
+            return replace(_mixed_ages(parts, cycle, emission), share=share)
+        found = _averaged(parts, cycle, emission, _inhaled, nodes)
+        return replace(found, share=share)
+
+    return work
+
+
+# spread of the volume over the breath's, from and below: how the split is summed
+_BY_SPREAD: tuple[tuple[float, float, _Work], ...] = (
+    (0.0, 0.03, _narrow(5)),
+    (0.03, 0.1, _narrow(12)),
+    (0.1, 0.4, _wide(10, 8)),
+    (0.4, np.inf, _wide(4, 0)),
+)
 
 
 def swept(parts: Parts, cycle: Cycle, emission: Emission) -> Arrivals:
     """What passes the Y outside the window, and its age: the other part of the split.
 
-    The share is exact only with ``1 - dispersed(...).share``; the ages are wanted.
+    The share is exact only as ``1 - dispersed(...).share``; the ages are wanted.
     """
-    return _averaged(parts, cycle, emission, _swept, 1.0)
+    return _averaged(parts, cycle, emission, _swept, int(wye.AGE_NODES_COUNT))
 
 
 def series_frac(
@@ -199,43 +256,68 @@ def series_frac(
 ) -> np.ndarray:
     """What is inhaled, as a Fourier series over the breath; nothing settles.
 
+    Each harmonic is the product of how the output sends it, how the limb damps and
+    delays it and how the window receives it; a stretch of constant flow sends the
+    phase of its middle times the sine of its half length over that half length.
+
     Holds    exact as the number of harmonics grows; a dozen do where the spread of
              the volume is above a tenth of the breath's.
     Shapes   arrays of n -> n.
     Checked  engine/evidence/published/wye_values.csv
     """
-    circle = 2 * np.pi / np.asarray(cycle.cycle_ml)
-    edges, shares = _emission_edges(cycle, emission)
-    turns = [np.exp(1j * circle * edge) for edge in edges]
-    window = np.exp(-1j * circle * cycle.window_ml)
-    total = np.asarray(cycle.window_ml / cycle.cycle_ml, dtype=float)
-    power, turned = window, list(turns)
+    circle = np.asarray(2 * np.pi / cycle.cycle_ml)
+    half_window = np.asarray(cycle.window_ml) / 2
+    received = _Sines(circle * half_window)
+    shares, middles_ml, halves_ml = _stretches(cycle, emission)
+    sent = _Sines(circle * halves_ml)
+    turn = _Turn(circle * (middles_ml - half_window))
+    damps = [(1j * circle * volume / tanks, tanks) for volume, tanks in parts]
+    total = np.full(circle.shape, 0.5)
     for n in range(1, harmonics + 1):
-        w = 1j * n * circle
-        received = (1 - power) / (w * cycle.cycle_ml)
-        sent = sum(
-            share * _mean_turn(turned[i], turned[i + 1], w, edges[i + 1] - edges[i])
-            for i, share in enumerate(shares)
-        )
-        spread = 1.0
-        for volume_ml, tanks in parts:
-            spread = spread * _tanks(w * volume_ml / tanks, tanks)
-        total = total + 2 * np.real(received * sent * spread)
-        power = power * window
-        turned = [value * turn for value, turn in zip(turned, turns, strict=True)]
-    return np.clip(total, 0.0, 1.0) * cycle.patient_share
+        harmonic = (shares * sent.next() * turn.next()).sum(axis=0)
+        for w, tanks in damps:
+            harmonic = harmonic * _tanks(n * w, tanks)
+        total += received.next() * harmonic.real
+    share = 2 * total * cycle.window_ml / cycle.cycle_ml
+    return np.clip(share, 0.0, 1.0) * cycle.patient_share
+
+
+class _Turn:
+    """exp(i x), exp(2 i x), ... one after the other."""
+
+    def __init__(self, angle: np.ndarray) -> None:
+        self._step = np.exp(1j * angle)
+        self._value: np.ndarray | None = None
+
+    def next(self) -> np.ndarray:
+        value = self._step if self._value is None else self._value * self._step
+        self._value = value
+        return value
+
+
+class _Sines:
+    """sin(n x) / (n x) for n = 1, 2, ...; 1 throughout where x is 0."""
+
+    def __init__(self, angle: np.ndarray) -> None:
+        self._angle = np.maximum(angle, _SMALL_ANGLE)
+        self._turn = _Turn(self._angle)
+        self._n = 0
+
+    def next(self) -> np.ndarray:
+        self._n += 1
+        return np.imag(self._turn.next()) / (self._n * self._angle)
 
 
 # --- the breath in volume and in time --------------------------------------------
 
 
-def _inspiratory_time_s(cycle: Cycle, position_ml: np.ndarray) -> np.ndarray:
+def _inspiratory_time_s(cycle: Cycle, position_ml: Values) -> np.ndarray:
     """When a position of the inspired gas passes the Y."""
-    u = np.clip(position_ml / cycle.inspired_ml, 0.0, 1.0)
     ratio = cycle.peak_ratio
     if np.ndim(ratio) == 0 and ratio == 1:
-        return cycle.inspiratory_s * u
-    root = np.sqrt(np.maximum(ratio**2 - 4 * (ratio - 1) * u, 0.0))
+        return position_ml * (cycle.inspiratory_s / cycle.inspired_ml)
+    u = np.minimum(position_ml / cycle.inspired_ml, 1.0)
+    root = np.sqrt(np.maximum(ratio * ratio - 4 * (ratio - 1) * u, 0.0))
     return cycle.inspiratory_s * 2 * u / (ratio + root)
 
 
@@ -245,9 +327,10 @@ def _inspired_by_ml(cycle: Cycle, time_s: Values) -> np.ndarray:
     return cycle.inspired_ml * s * (cycle.peak_ratio - (cycle.peak_ratio - 1) * s)
 
 
-def _expiratory_time_s(cycle: Cycle, position_ml: np.ndarray) -> np.ndarray:
-    share = np.clip((position_ml - cycle.inspired_ml) / cycle.swept_ml, 0.0, 1.0)
-    return cycle.inspiratory_s + cycle.expiratory_s * share
+def _expiratory_time_s(cycle: Cycle, position_ml: Values) -> np.ndarray:
+    """When a position of the gas swept past the Y passes it."""
+    slope = cycle.expiratory_s / cycle.swept_ml
+    return cycle.inspiratory_s + (position_ml - cycle.inspired_ml) * slope
 
 
 def _swept_by_ml(cycle: Cycle, time_s: Values) -> np.ndarray:
@@ -309,7 +392,8 @@ def _meeting(
     """How an output and a window meet after the shift by ``volume_ml``.
 
     The function returned gives the share of the output that arrives in the window,
-    and its age at either end of the overlap; age runs evenly between the two.
+    and its age at either end of the overlap; age runs evenly between the two. Where
+    they do not meet the share is nothing and the ages mean nothing.
     """
     cycle_ml, cycle_s = cycle.cycle_ml, cycle.cycle_s
     laps = np.floor(volume_ml / cycle_ml)
@@ -331,14 +415,11 @@ def _meeting(
     return met
 
 
-def _pooled(pieces: list[_Piece], patient_share: Values) -> Arrivals:
-    """Several overlaps as one: total share, mean and variance of age."""
-    share, first, second = _moments(pieces)
+def _arrivals(share: np.ndarray, first: np.ndarray, second: np.ndarray) -> Arrivals:
+    """From sums of share, share x age and share x age squared."""
     safe = np.maximum(share, _TINY)
     mean_s = first / safe
-    return Arrivals(
-        share * patient_share, mean_s, np.maximum(second / safe - mean_s**2, 0.0)
-    )
+    return Arrivals(share, mean_s, np.maximum(second / safe - mean_s * mean_s, 0.0))
 
 
 def _moments(pieces: list[_Piece]) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
@@ -361,22 +442,22 @@ def _spread_ml(parts: Parts) -> np.ndarray:
     return np.sqrt(sum(np.asarray(volume) ** 2 / tanks for volume, tanks in parts))
 
 
-_NORMAL_QUANTILES = ndtri(
-    (np.arange(int(wye.VOLUME_NODES_COUNT)) + 0.5) / int(wye.VOLUME_NODES_COUNT)
-)
+@cache
+def _normal_quantiles(n: int) -> np.ndarray:
+    return ndtri((np.arange(n) + 0.5) / n)
 
 
-def _volume_nodes_ml(parts: Parts) -> np.ndarray:
+def _volume_nodes_ml(parts: Parts, count: int) -> np.ndarray:
     """Volumes of equal weight that stand for the spread, one row of them a treatment.
 
     Source   WILSON_1931 for the quantiles of a gamma distribution.
     """
     volume_ml = _volume_ml(parts)
     ninth, third = coefficients(wye.GAMMA_QUANTILE_COEF)
-    c = (_spread_ml(parts) / np.maximum(volume_ml, _TINY))[..., None] ** 2
-    root = np.maximum(1 - c / ninth + _NORMAL_QUANTILES * np.sqrt(c) / third, 0.0)
-    nodes = root**3
-    return volume_ml[..., None] * nodes / nodes.mean(axis=-1, keepdims=True)
+    c = (_spread_ml(parts) / np.maximum(volume_ml, _TINY))[..., None]
+    root = np.maximum(1 - c * c / ninth + _normal_quantiles(count) * (c / third), 0.0)
+    nodes = root * root * root
+    return nodes * (volume_ml[..., None] / nodes.mean(axis=-1, keepdims=True))
 
 
 def _averaged(
@@ -384,53 +465,95 @@ def _averaged(
     cycle: Cycle,
     emission: Emission,
     pieces: Callable[[Values, Cycle, Emission], list[_Piece]],
-    patient_share: Values,
+    nodes: int,
 ) -> Arrivals:
     """The split averaged over the volumes that stand for the spread."""
-    wide_cycle = Cycle(**{k: _column(v) for k, v in vars(cycle).items()})
-    wide_emission = Emission(_column(emission.start_s), _column(emission.stop_s))
-    met = pieces(_volume_nodes_ml(parts), wide_cycle, wide_emission)
-    share, first, second = (moment.mean(axis=-1) for moment in _moments(met))
-    safe = np.maximum(share, _TINY)
-    mean_s = first / safe
-    return Arrivals(
-        share * patient_share, mean_s, np.maximum(second / safe - mean_s**2, 0.0)
+    met = pieces(
+        _volume_nodes_ml(parts, nodes),
+        Cycle(**{k: _column(v) for k, v in vars(cycle).items()}),
+        Emission(_column(emission.start_s), _column(emission.stop_s)),
     )
+    return _arrivals(*(moment.mean(axis=-1) for moment in _moments(met)))
+
+
+def _mixed_ages(parts: Parts, cycle: Cycle, emission: Emission) -> Arrivals:
+    """Age of what is inhaled where arrival no longer depends on the time of output.
+
+    The gas takes its volume over the mean flow, give or take how far output and window
+    run ahead of the mean flow.
+    """
+    per_ml = cycle.cycle_s / cycle.cycle_ml
+    turn_s = cycle.inspiratory_s - cycle.inspired_ml * per_ml
+    window_s = _inspiratory_time_s(cycle, cycle.window_ml) - cycle.window_ml * per_ml
+    mean_in_s, variance_in = window_s / 2, window_s**2 / 12
+    mean_out_s, variance_out = _ahead(cycle, emission, turn_s)
+    return Arrivals(
+        np.ones_like(turn_s),
+        np.maximum(_volume_ml(parts) * per_ml + mean_in_s - mean_out_s, 0.0),
+        (_spread_ml(parts) * per_ml) ** 2 + variance_in + variance_out,
+    )
+
+
+def _ahead(
+    cycle: Cycle, emission: Emission, turn_s: np.ndarray
+) -> tuple[np.ndarray, np.ndarray]:
+    """Mean and variance of how far output runs ahead of the mean flow.
+
+    It starts at nothing, is ``turn_s`` where the breath turns, and comes back.
+    """
+
+    def ahead(time_s: Values) -> np.ndarray:
+        rising = turn_s * time_s / cycle.inspiratory_s
+        falling = turn_s * (cycle.cycle_s - time_s) / cycle.expiratory_s
+        return np.where(time_s < cycle.inspiratory_s, rising, falling)
+
+    turn = cycle.inspiratory_s
+    ends = (
+        emission.start_s,
+        np.clip(turn, emission.start_s, emission.stop_s),
+        emission.stop_s,
+    )
+    duration_s = np.maximum(emission.stop_s - emission.start_s, _TINY)
+    pieces = [
+        ((last - first) / duration_s, ahead(first), ahead(last))
+        for first, last in pairwise(ends)
+    ]
+    _, mean, square = _moments(pieces)
+    return mean, np.maximum(square - mean * mean, 0.0)
 
 
 def _column(values: Values) -> Values:
     return values[..., None] if isinstance(values, np.ndarray) else values
 
 
-def _emission_edges(
+def _at(values: Values, index: np.ndarray) -> Values:
+    return values[index] if np.ndim(values) else values
+
+
+def _picked(record: Record, index: np.ndarray) -> Record:
+    return replace(record, **{k: _at(v, index) for k, v in vars(record).items()})
+
+
+def _stretches(
     cycle: Cycle, emission: Emission
-) -> tuple[list[np.ndarray], list[np.ndarray]]:
-    """The output as stretches of constant flow: their ends in mL, share of each."""
-    steady = bool(np.all(np.asarray(cycle.peak_ratio) == 1))
+) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """The output as stretches of constant flow, on a first axis.
+
+    Returns  share, middle in mL and half length in mL of each stretch.
+    """
+    steady = np.ndim(cycle.peak_ratio) == 0 and cycle.peak_ratio == 1
     pieces = 1 if steady else int(wye.FALLING_FLOW_PIECES_COUNT)
-    last_in_s = np.minimum(emission.stop_s, cycle.inspiratory_s)
-    first_in_s = np.minimum(emission.start_s, cycle.inspiratory_s)
-    first_out_s = np.maximum(emission.start_s, cycle.inspiratory_s)
-    last_out_s = np.maximum(emission.stop_s, cycle.inspiratory_s)
-    times = [
-        first_in_s + (last_in_s - first_in_s) * i / pieces for i in range(pieces + 1)
-    ]
-    edges = [np.asarray(_inspired_by_ml(cycle, t)) for t in times]
+    turn_s = cycle.inspiratory_s
     duration_s = np.maximum(emission.stop_s - emission.start_s, _TINY)
-    shares = [(last_in_s - first_in_s) / duration_s / pieces] * pieces
-    # Between the last of the inspiration and the first of the expiration: no output.
-    edges += [_swept_by_ml(cycle, first_out_s), _swept_by_ml(cycle, last_out_s)]
-    shares += [0.0 * duration_s, (last_out_s - first_out_s) / duration_s]
-    return edges, shares
-
-
-def _mean_turn(
-    start: np.ndarray, stop: np.ndarray, w: np.ndarray, length_ml: np.ndarray
-) -> np.ndarray:
-    """Mean of exp(w u) over a stretch; its value at the start where there is none."""
-    reach = w * length_ml
-    short = np.abs(reach) < 1e-9
-    return np.where(short, start, (stop - start) / np.where(short, 1.0, reach))
+    first_s = np.minimum(emission.start_s, turn_s)
+    step_s = (np.minimum(emission.stop_s, turn_s) - first_s) / pieces
+    ends = [_inspired_by_ml(cycle, first_s + i * step_s) for i in range(pieces + 1)]
+    last_s = np.maximum(emission.start_s, turn_s), np.maximum(emission.stop_s, turn_s)
+    after = [_swept_by_ml(cycle, time_s) for time_s in last_s]
+    shares = [step_s / duration_s] * pieces + [(last_s[1] - last_s[0]) / duration_s]
+    lows = np.stack([np.asarray(v) for v in (*ends[:-1], after[0])])
+    highs = np.stack([np.asarray(v) for v in (*ends[1:], after[1])])
+    return np.stack(shares), (lows + highs) / 2, (highs - lows) / 2
 
 
 def _tanks(w: np.ndarray, tanks: float) -> np.ndarray:
@@ -439,7 +562,8 @@ def _tanks(w: np.ndarray, tanks: float) -> np.ndarray:
     if tanks == 1:
         return one
     if tanks == 8:
-        four = (one * one) ** 2
+        two = one * one
+        four = two * two
         return four * four
     return one**tanks
 
