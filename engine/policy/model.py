@@ -48,7 +48,7 @@ class Policy(Strict):
     sensors: Sensors
     exposure: Exposure
     generator_use: GeneratorUse
-    placement: tuple[PlacementRow, ...] = Field(min_length=1)
+    placement: tuple[PlacementRow, ...] = Field(min_length=1, max_length=60)
 
     @field_validator("placement")
     @classmethod
