@@ -147,7 +147,8 @@ def test_convictions_of_twins_both_ways():
     done = odds_ratio([[2, 15], [10, 3]])
     assert done.p == pytest.approx(0.0005367, abs=5e-8)
     assert done.p_less == pytest.approx(0.0004652, abs=5e-8)
-    assert done.ratio == pytest.approx(0.04693661, abs=5e-9)
+    # The printed ratio comes from a search that stops in the seventh place.
+    assert done.ratio == pytest.approx(0.04693661, abs=5e-8)
 
 
 def test_many_differences_are_sampled_with_a_seed():
