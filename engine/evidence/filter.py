@@ -30,6 +30,13 @@ OVER_RANGE_CMH2O = Number(
     where="more than the pressures a ventilator can hold across a limb in use",
     known="ours",
 )
+NEW_FILTER_WITHIN_H = Number(
+    value=2.0,
+    unit="h",
+    source=OURS,
+    where="readings this soon after installation are taken as of the new filter",
+    known="ours",
+)
 JUMP_FRAC = Number(
     value=0.5,
     unit="frac",

@@ -236,9 +236,7 @@ def build_context(
             "enough": limits.readings_for_a_trend_count,
         },
     )
-    cursor.execute(
-        _CHECKS, {"unfiltered": policy.sensors.unfiltered_since_check_count}
-    )
+    cursor.execute(_CHECKS, {"unfiltered": policy.sensors.unfiltered_since_check_count})
     cursor.execute(_FAULTS, {"soon_h": policy.sensors.fault_soon_after_h})
     cursor.execute(_CLOCKS)
     cursor.execute(_ALL)

@@ -88,9 +88,7 @@ def changed_policy(policy: Policy, scenario: Scenario | None) -> Policy:
         raise ScenarioInvalid(str(problem)) from None
 
 
-def apply_facts(
-    cursor: duckdb.DuckDBPyConnection, scenario: Scenario | None
-) -> None:
+def apply_facts(cursor: duckdb.DuckDBPyConnection, scenario: Scenario | None) -> None:
     """Puts a view ``treatment`` with the changed facts in front of the logged one."""
     if scenario is None or not scenario.fact:
         return
