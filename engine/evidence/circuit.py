@@ -12,6 +12,15 @@ LIMB_MM = Number(
     where="inner diameter of adult corrugated tubing",
     known="common practice",
 )
+CHILD_LIMB_MM = Number(
+    value=15.0,
+    low=10.0,
+    high=15.0,
+    unit="mm",
+    source=COMMON_PRACTICE,
+    where="inner diameter of tubing used with a child's tube",
+    known="common practice",
+)
 HUMIDIFIER_LIMB_CM = Number(
     value=150.0,
     low=120.0,

@@ -555,3 +555,10 @@ WAN_2014 = Source(
     journal="Respiratory Care 59(10):1494",
     address="doi.org/10.4187/respcare.02999",
 )
+CALIBRATION_FIT = Source(
+    key="CALIBRATION_FIT",
+    authors="this project",
+    year=None,
+    title="Fit to the calibration studies of bench_delivery.csv",
+    known="fitted",
+)

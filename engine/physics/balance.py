@@ -45,7 +45,7 @@ def _balance(rows: Batch) -> dict[str, np.ndarray]:
     }
     if len(index):
         found, bands = estimated(setup.pick(index))
-        for name, frac in (*found.places.items(), *_passages(found).items()):
+        for name, frac in (*found.places.items(), *passages(found).items()):
             low, high = bands[name]
             out[f"{name}_frac"][index] = frac
             out[f"{name}_low_frac"][index] = np.minimum(low, frac)
@@ -84,7 +84,7 @@ def _with_humidity(
     return bands
 
 
-def _passages(found: Estimate) -> dict[str, np.ndarray]:
+def passages(found: Estimate) -> dict[str, np.ndarray]:
     return {
         "delivered": found.delivered,
         "swept_past_wye": found.swept,

@@ -10,12 +10,12 @@ from dataclasses import dataclass
 import numpy as np
 
 from engine.columns import FRACTIONS, code_of
-from engine.evidence import circuit, filter_capture, lung, tube
+from engine.evidence import circuit, filter_capture, lung
 from engine.physics.constants import Constants
 from engine.physics.droplets import size_weights
 from engine.physics.filter import hme_capture_frac, penetration_frac
 from engine.physics.lung import SUBJECTS, Breath, Subject, intubated_deposition
-from engine.physics.setup import LIMB_ML_PER_CM, Setup
+from engine.physics.setup import Setup, is_child, ml_per_cm
 from engine.physics.sizes import (
     FAST,
     LPM_PER_ML_PER_S,
@@ -196,7 +196,7 @@ _LUNGS = ("male", "10y", "5y")
 
 def lung_index(setup: Setup) -> np.ndarray:
     """Which reference lung is taken, by the size of the tube."""
-    return (setup.tube_mm < float(tube.ADULT_TUBE_MM)).astype(int) + (
+    return is_child(setup.tube_mm).astype(int) + (
         setup.tube_mm < float(lung.SMALL_CHILD_TUBE_MM)
     )
 
@@ -213,7 +213,7 @@ def _expiratory_limb_frac(setup: Setup, sized: Sized) -> np.ndarray:
 
     The gas of a breath pushes the limb's content on; a single limb has no such limb.
     """
-    limb_ml = float(circuit.EXPIRATORY_LIMB_CM) * LIMB_ML_PER_CM
+    limb_ml = float(circuit.EXPIRATORY_LIMB_CM) * ml_per_cm(setup.limb_mm)
     cycle_s = setup.inspiratory_s + setup.expiratory_s
     swept_ml = (setup.bias_ml_per_s + setup.gas_ml_per_s) * setup.expiratory_s
     time_s = limb_ml / (setup.tidal_ml + swept_ml) * cycle_s

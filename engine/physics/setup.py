@@ -18,7 +18,6 @@ from engine.evidence.shape import Number
 from engine.units import ML_PER_L, MM_PER_CM, S_PER_MIN
 
 GENERATORS = words_of("generator")[:-1]
-LIMB_ML_PER_CM = np.pi / 4 * (float(circuit.LIMB_MM) / MM_PER_CM) ** 2
 
 REFUSALS: tuple[str, ...] = (
     "",
@@ -103,6 +102,7 @@ class Setup:
     peak_ratio: np.ndarray  # peak over mean inspiratory flow, 1 to 2
     bias_ml_per_s: np.ndarray
     gas_ml_per_s: np.ndarray  # driving gas while the patient breathes out
+    limb_mm: np.ndarray
     distance_cm: np.ndarray  # inspiratory limb to the Y
     patient_side_cm: np.ndarray  # tubing between the Y and a generator past it
     has_chamber: np.ndarray
@@ -112,7 +112,7 @@ class Setup:
     is_tracheostomy: np.ndarray
     tube_mm: np.ndarray
     tube_cm: np.ndarray
-    dead_ml: np.ndarray  # Y to tube tip
+    dead_ml: np.ndarray  # Y, or an HME's far side, to tube tip
     filter_present: np.ndarray  # 1, 0; worst case 0 where unknown
     filter_kind: np.ndarray  # code, -1 unknown
     refusal: np.ndarray  # int8, into REFUSALS
@@ -158,6 +158,9 @@ def setup_of(rows: Batch) -> Setup:
     inspiratory_s, expiratory_s = _timing(rows, gaps)
     synchronised = _synchronised(rows, gaps)
     tracheostomy, tube_mm, tube_cm = _airway(rows, gaps)
+    limb_mm = np.where(
+        is_child(tube_mm), float(circuit.CHILD_LIMB_MM), float(circuit.LIMB_MM)
+    )
     in_line = _hme(rows, gaps)
     humid, chamber = _humidity(rows, gaps)
     present, kind = _filter(rows, gaps)
@@ -178,6 +181,7 @@ def setup_of(rows: Batch) -> Setup:
         peak_ratio=_peak_ratio(rows, inspiratory_s),
         bias_ml_per_s=_bias(rows, single, gaps),
         gas_ml_per_s=_gas(rows, synchronised, gaps),
+        limb_mm=limb_mm,
         distance_cm=_distance(rows, gaps),
         patient_side_cm=_patient_side(rows),
         has_chamber=chamber,
@@ -187,7 +191,9 @@ def setup_of(rows: Batch) -> Setup:
         is_tracheostomy=tracheostomy,
         tube_mm=tube_mm,
         tube_cm=tube_cm,
-        dead_ml=_dead_space(rows, tube_mm, tube_cm, in_line),
+        dead_ml=_bore_ml(tube_mm, tube_cm)
+        + _fittings_ml(tube_mm, in_line)
+        + _patient_side(rows) * ml_per_cm(limb_mm),
         filter_present=present,
         filter_kind=kind,
         refusal=np.zeros(size(rows), np.int8),
@@ -320,11 +326,12 @@ def _airway(rows: Batch, gaps: _Gaps) -> tuple[np.ndarray, np.ndarray, np.ndarra
     tube_mm = gaps.filled(rows["tube_id_mm"], usual_mm, TUBE)
     gaps.note(AIRWAY, rows["airway"] < 0)
     tracheostomy = rows["airway"] == code_of("airway", "tracheostomy")
-    child = tube_mm < float(tube.ADULT_TUBE_MM)
     tube_cm = np.where(
         tracheostomy,
         float(tube.TRACHEOSTOMY_CM),
-        np.where(child, float(tube.CHILD_TUBE_CM), float(tube.ADULT_TUBE_CM)),
+        np.where(
+            is_child(tube_mm), float(tube.CHILD_TUBE_CM), float(tube.ADULT_TUBE_CM)
+        ),
     )
     return tracheostomy, tube_mm, tube_cm
 
@@ -335,17 +342,27 @@ def _patient_side(rows: Batch) -> np.ndarray:
     return np.where(past, np.nan_to_num(rows["distance_from_wye_cm"], nan=0.0), 0.0)
 
 
-def _dead_space(
-    rows: Batch, tube_mm: np.ndarray, tube_cm: np.ndarray, in_line: np.ndarray
-) -> np.ndarray:
-    bore_ml = np.pi / 4 * (tube_mm / MM_PER_CM) ** 2 * tube_cm
-    child = tube_mm < float(tube.ADULT_TUBE_MM)
-    fittings_ml = np.where(
-        child, float(circuit.SMALL_CONNECTOR_ML), float(circuit.CONNECTOR_ML)
+def is_child(tube_mm: np.ndarray) -> np.ndarray:
+    """Whether a tube of this size is a child's."""
+    return tube_mm < float(tube.ADULT_TUBE_MM)
+
+
+def ml_per_cm(bore_mm: np.ndarray) -> np.ndarray:
+    """Gas in a centimetre of tubing."""
+    return np.pi / 4 * (bore_mm / MM_PER_CM) ** 2
+
+
+def _bore_ml(tube_mm: np.ndarray, tube_cm: np.ndarray) -> np.ndarray:
+    return ml_per_cm(tube_mm) * tube_cm
+
+
+def _fittings_ml(tube_mm: np.ndarray, in_line: np.ndarray) -> np.ndarray:
+    connector_ml = np.where(
+        is_child(tube_mm),
+        float(circuit.SMALL_CONNECTOR_ML),
+        float(circuit.CONNECTOR_ML),
     )
-    past_wye_ml = _patient_side(rows) * LIMB_ML_PER_CM
-    hme_ml = np.where(in_line, float(circuit.HME_ML), 0.0)
-    return bore_ml + fittings_ml + past_wye_ml + hme_ml
+    return connector_ml + np.where(in_line, float(circuit.HME_ML), 0.0)
 
 
 def _hme(rows: Batch, gaps: _Gaps) -> np.ndarray:

@@ -6,7 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from engine.evidence import circuit, droplet, tube
+from engine.evidence import droplet, tube
 from engine.physics.constants import Constants
 from engine.physics.droplets import droplet_relaxation_s, size_nodes_um
 from engine.physics.limb import settling_rate_per_s
@@ -39,7 +39,7 @@ def sized_of(setup: Setup, constants: Constants) -> Sized:
     diameter_um = size_nodes_um(setup.mmad_um, setup.gsd).astype(FAST)
     relaxation_s = droplet_relaxation_s(diameter_um, float(tube.TUBE_GAS_K))
     falls = relaxation_s * float(droplet.GRAVITY_M_PER_S2)
-    mixed = settling_rate_per_s(falls, float(circuit.LIMB_MM) * M_PER_MM)
+    mixed = settling_rate_per_s(falls, column(setup.limb_mm * M_PER_MM))
     return Sized(
         diameter_um,
         relaxation_s,

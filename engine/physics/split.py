@@ -15,7 +15,7 @@ from engine.columns import code_of
 from engine.evidence import circuit, device
 from engine.physics import wye
 from engine.physics.constants import Constants
-from engine.physics.setup import LIMB_ML_PER_CM, Setup
+from engine.physics.setup import Setup, ml_per_cm
 from engine.physics.sizes import Sized, column
 
 _AIRWAY_SIDE = code_of("site", "airway_side")
@@ -125,7 +125,9 @@ def emission(setup: Setup) -> wye.Emission:
 
 def way_to_wye(setup: Setup, constants: Constants) -> list[tuple[np.ndarray, float]]:
     """Gas between generator and Y: tubing that disperses, then chambers that mix."""
-    tubing_ml = limb_cm(setup) * LIMB_ML_PER_CM + float(circuit.WYE_FITTING_ML)
+    tubing_ml = limb_cm(setup) * ml_per_cm(setup.limb_mm) + float(
+        circuit.WYE_FITTING_ML
+    )
     chamber_ml = np.where(passes_chamber(setup), float(circuit.CHAMBER_ML), 0.0)
     spacer_ml = np.where(setup.is_puff, float(circuit.SPACER_ML), 0.0)
     parts = [(tubing_ml, constants.tanks_count)]
@@ -156,4 +158,4 @@ def passes_chamber(setup: Setup) -> np.ndarray:
 def patient_side_ml(setup: Setup) -> np.ndarray:
     """Gas between the Y, or an HME, and a generator on the patient's side of it."""
     tubing_cm = np.where(setup.site == _AIRWAY_SIDE, setup.patient_side_cm, 0.0)
-    return float(circuit.WYE_FITTING_ML) + tubing_cm * LIMB_ML_PER_CM
+    return float(circuit.WYE_FITTING_ML) + tubing_cm * ml_per_cm(setup.limb_mm)
