@@ -13,29 +13,25 @@ from __future__ import annotations
 from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
+from engine.journal import open_journal
+from engine.log import open_log
+from engine.policy import load_policy
+from engine.replay import load_scenario, replay
+
 if TYPE_CHECKING:
-    from engine.journal import open_journal
-    from engine.log import open_log
-    from engine.policy import load_policy
-    from engine.replay import load_scenario, replay
     from engine.reviews.filters import review_filters
     from engine.reviews.incident import review_incident
     from engine.reviews.month import review_month
     from engine.reviews.scenario import compare_scenarios
     from engine.reviews.topics import review_topics
 
-# Loaded when first asked for: a word of the columns must not cost the whole house.
-_FACE = {
-    "open_log": "engine.log",
-    "open_journal": "engine.journal",
-    "load_policy": "engine.policy",
-    "load_scenario": "engine.replay",
-    "replay": "engine.replay",
-    "review_month": "engine.reviews.month",
-    "review_topics": "engine.reviews.topics",
-    "review_incident": "engine.reviews.incident",
-    "review_filters": "engine.reviews.filters",
-    "compare_scenarios": "engine.reviews.scenario",
+# Reviews are loaded when first asked for; statistics take a while to load.
+_REVIEWS = {
+    "review_month": "month",
+    "review_topics": "topics",
+    "review_incident": "incident",
+    "review_filters": "filters",
+    "compare_scenarios": "scenario",
 }
 
 __all__ = [
@@ -53,6 +49,6 @@ __all__ = [
 
 
 def __getattr__(name: str) -> Any:
-    if name not in _FACE:
+    if name not in _REVIEWS:
         raise AttributeError(f"module 'engine' has no attribute {name!r}")
-    return getattr(import_module(_FACE[name]), name)
+    return getattr(import_module(f"engine.reviews.{_REVIEWS[name]}"), name)

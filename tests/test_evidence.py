@@ -16,7 +16,6 @@ CODE = "\n".join(
     path.read_text("utf-8")
     for folder in ("engine", "reviewapp")
     for path in (ROOT / folder).rglob("*.py")
-    if "evidence" not in path.parts
 )
 
 
@@ -43,7 +42,8 @@ def test_the_number_says_where_it_stands_and_how_it_is_known(name):
 
 @pytest.mark.parametrize("name", NUMBERS)
 def test_every_number_is_used(name):
-    assert re.search(rf"\b{name}\b", CODE), f"{name} stands in no code"
+    mentions = re.findall(rf"\b{name}\b", CODE)
+    assert len(mentions) > 1, f"{name} is defined and never read"
 
 
 def test_no_number_hides_outside_the_evidence():
