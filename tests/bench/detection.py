@@ -25,6 +25,7 @@ from scipy.stats import beta
 from engine.log import open_log
 from engine.log.schema import write_log
 from engine.policy import load_policy
+from engine.replay import replay
 from engine.reviews.incident import Incident, review_incident
 from engine.stats.drift import drift_of
 from engine.stats.filter_life import life_of
@@ -192,7 +193,7 @@ def fault(seed: int, tally: Counter[str], folder: Path) -> None:
     cause, tables, truth = made(seed)
     write_log(folder / "log.duckdb", tables, "Etc/UTC", datetime(2026, 6, 1))
     with open_log(folder / "log.duckdb") as log:
-        done = replayed(log)
+        done = replay(log, POLICY)
         review = review_incident(done, "INC")
         done.close()
     recorded = cause != "none"
@@ -220,16 +221,6 @@ def leads(review: Incident, cause: str) -> bool:
 def nothing_fits(review: Incident) -> bool:
     """Whether no explanation is called consistent where nothing was recorded."""
     return all(e.grade in {"no record", "against"} for e in review.explanations)
-
-
-def replayed(log):
-    """The replay of a log; by hand where the joint is not yet in place."""
-    try:
-        from engine.replay import replay
-    except ImportError:
-        sys.path.insert(0, str(Path(__file__).parents[1] / "engine" / "reviews"))
-        from conftest import by_hand as replay
-    return replay(log, POLICY)
 
 
 # question, right, of, target, how the target is met
