@@ -47,7 +47,7 @@ class Explanation:
 
     @property
     def weight(self) -> int:
-        """How much speaks for it: its conditions that hold, by how specific they are."""
+        """How much speaks for it: conditions that hold, by how specific they are."""
         speaking = [c for c in self.conditions if c.role != "against" and c.holds]
         return sum(c.weight for c in speaking)
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 import numpy as np
 import pandas as pd
@@ -12,15 +12,13 @@ import pandas as pd
 from engine.errors import UnknownId
 from engine.evidence.filter import NEW_FILTER_CMH2O_PER_LPS, POOLED_FILTERS_COUNT
 from engine.evidence.stickiness import stickiness_of
+from engine.replay import Replay
 from engine.reviews import filter_rows as rows
 from engine.reviews.wording import counted, listed
 from engine.stats.filter_life import FilterLife, life_of
 from engine.stats.lifetimes import Lives, kaplan_meier, log_rank
 from engine.stats.loading import CANNOT_TELL, Loading, loading_shares
 from engine.stats.trends import Slope, theil_sen
-
-if TYPE_CHECKING:
-    from engine.replay import Replay
 
 STATE_WORDS = {
     "over_limit": "over the limit",

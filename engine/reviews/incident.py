@@ -22,6 +22,7 @@ from engine.evidence.sensor import (
     HUMID_NEAR_H,
     WATER_NEAR_H,
 )
+from engine.replay import Replay
 from engine.reviews import incident_rows as rows
 from engine.reviews.examination import causes_named
 from engine.reviews.explanations import Evidence, Explanation, explain
@@ -39,7 +40,6 @@ from engine.stats.odds import Ratio
 
 if TYPE_CHECKING:
     from engine.journal import Journal
-    from engine.replay import Replay
 
 EXPIRATORY_FLOW = "expiratory_flow"
 
@@ -184,16 +184,17 @@ def review_fault(
     )
     harm, harm_sentence = _harm(facts, journal)
     exposed = _exposed(replay, facts, burden)
-    context = {
-        "look": look,
-        "burden": burden,
-        "drift": drift,
-        "started_at": started_at,
-        "zone": replay.log.site_zone,
-        "clock": clock,
-    }
     return Incident(
-        sentence=sentence_of(facts, explanations, **context),
+        sentence=sentence_of(
+            facts,
+            explanations,
+            look=look,
+            burden=burden,
+            drift=drift,
+            started_at=started_at,
+            zone=replay.log.site_zone,
+            clock=clock,
+        ),
         facts=facts,
         site_zone=replay.log.site_zone,
         look_back=look,

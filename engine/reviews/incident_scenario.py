@@ -17,12 +17,12 @@ import pyarrow as pa
 
 from engine.columns import code_of
 from engine.physics.balance import balance
+from engine.replay import Replay
 from engine.replay.batches import batch_of
 from engine.reviews.wording import counted
 
 if TYPE_CHECKING:
     from engine.policy import Policy
-    from engine.replay import Replay
     from engine.reviews.incident import Incident
 
 _SETUPS = """

@@ -185,14 +185,14 @@ def _elsewhere(incident: Incident) -> str:
         ]
         parts.append(table(heads, rows, " rrrr"))
     if not incident.patients.empty:
-        heads = ("Patient token", "Treatments", "No filter", "Unknown")
+        named = ("Patient token", "Treatments", "No filter", "Unknown")
         names = ("patient_token", "treatments_count", "absent_count", "unknown_count")
-        rows = [
+        people = [
             tuple(row[name] for name in names)
             for row in incident.patients.to_dict("records")
         ]
         parts.append(_p("Patients on this ventilator in the look-back:"))
-        parts.append(table(heads, rows, " rrr"))
+        parts.append(table(named, people, " rrr"))
     return "".join(parts)
 
 
@@ -208,19 +208,19 @@ def _actions(incident: Incident) -> str:
         parts.append(_p("No action has been decided yet."))
     else:
         names = ("text", "strength", "owner_role", "measure", "due")
-        rows = [
+        decided = [
             tuple(row[name] for name in names)
             for row in incident.actions.to_dict("records")
         ]
         heads = ("Decided", "Strength", "Owner (role)", "Measured by", "Due")
-        parts.append(table(heads, rows))
+        parts.append(table(heads, decided))
     names = ("strength", "text", "measure", "because")
-    rows = [
+    offered = [
         tuple(row[name] for name in names)
         for row in incident.suggested_actions.to_dict("records")
     ]
     parts.append(_p("To choose from, the strongest first; none of it is decided here:"))
-    parts.append(table(("Strength", "Action", "Measured by", "Because of"), rows))
+    parts.append(table(("Strength", "Action", "Measured by", "Because of"), offered))
     return "".join(parts)
 
 
