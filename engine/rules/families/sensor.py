@@ -69,7 +69,7 @@ SE04 = Rule(
     when=filter_is_absent,
     fires=fault_followed_soon,
     says="A fault followed {hours_to_fault_h} after this unfiltered treatment. Near "
-    "in time is not a cause; other ventilators and other treatments must be compared.",
+    "in time is not a cause; the same window on other ventilators is the comparison.",
     would_change="A cause found on examination, or as many such treatments without a "
     "fault.",
 )
