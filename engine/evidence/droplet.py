@@ -24,6 +24,20 @@ AIR_REFERENCE_COEF = Number(
     known="read",
     note="as ISO 15900 uses them",
 )
+STANDARD_PA = Number(
+    value=101325.0,
+    unit="pa",
+    source=CODATA,
+    where="standard atmosphere",
+    known="from memory",
+)
+ROOM_K = Number(
+    value=293.15,
+    unit="k",
+    source=HINDS_1999,
+    where="temperature of tables that name none",
+    known="from memory",
+)
 GRAVITY_M_PER_S2 = Number(
     value=9.80665,
     unit="m_per_s2",

@@ -9,7 +9,7 @@ from engine.evidence import droplet
 from engine.evidence.shape import Number
 from engine.units import KELVIN_AT_0_C
 
-STANDARD_PA = 101325.0
+STANDARD_PA = float(droplet.STANDARD_PA)
 
 
 def coefficients(number: Number) -> tuple[float, ...]:
