@@ -12,7 +12,13 @@ import numpy as np
 
 from engine.batch import Batch, is_above, is_below, is_missing, is_word, is_yes, size
 from engine.policy import Policy
-from engine.rules.limits import asked_for, drug_holds, filter_hours_h, run_time_min
+from engine.rules.limits import (
+    asked_for,
+    drug_holds,
+    drugs_held,
+    filter_hours_h,
+    run_time_min,
+)
 from engine.ternary import UNKNOWN, Ternary
 
 NEBULIZERS = ("jet", "breath_enhanced_jet", "vibrating_mesh", "ultrasonic")
@@ -139,10 +145,14 @@ def drug_is_in_an_unsuited_pair(rows: Batch, policy: Policy) -> Ternary:
 
 
 def generator_is_unsuited_to_drug(rows: Batch, policy: Policy) -> Ternary:
+    pairs = policy.generator_use.unsuited
+    known = ~is_missing(rows, "drug")
     found = Ternary.of(np.zeros(size(rows), dtype=bool))
-    for pair in policy.generator_use.unsuited:
+    for pair, held in zip(
+        pairs, drugs_held(rows, [pair.drug for pair in pairs]), strict=True
+    ):
         used = is_word(rows, "generator", *pair.generator)
-        found = found | (drug_holds(rows, [pair.drug]) & used)
+        found = found | (Ternary.of(held, known) & used)
     return found
 
 

@@ -23,11 +23,15 @@ def asked_for(rows: Batch, name: str) -> np.ndarray:
 
 def drug_holds(rows: Batch, names: Sequence[str]) -> Ternary:
     """Whether the charted drug holds one of these names, capitals aside."""
+    held = drugs_held(rows, names).any(axis=0)
+    return Ternary.of(held, ~is_missing(rows, "drug"))
+
+
+def drugs_held(rows: Batch, names: Sequence[str]) -> np.ndarray:
+    """Names x treatments: whether the charted drug holds the name."""
     charted = np.char.lower(rows["drug"].astype(str))
-    found = np.zeros(size(rows), dtype=bool)
-    for name in names:
-        found |= np.char.find(charted, name.lower()) >= 0
-    return Ternary.of(found, ~is_missing(rows, "drug"))
+    found = [np.char.find(charted, name.lower()) >= 0 for name in names]
+    return np.array(found, dtype=bool).reshape(len(names), size(rows))
 
 
 def run_time_min(rows: Batch, policy: Policy) -> tuple[np.ndarray, np.ndarray]:
