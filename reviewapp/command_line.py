@@ -12,8 +12,12 @@ import sys
 from collections.abc import Callable, Sequence
 from datetime import UTC, datetime
 from pathlib import Path
+from typing import TYPE_CHECKING
 
-from engine.errors import EngineError
+from engine.errors import EngineError, UnknownId
+
+if TYPE_CHECKING:
+    from engine.physics.validation import Result
 
 DONE, FAULT, BAD_INPUT = 0, 1, 2
 
@@ -85,8 +89,7 @@ def _parser() -> argparse.ArgumentParser:
     one.add_argument("--journal", type=Path, metavar="FILE")
     _judged(one)
 
-    one = add("verify", _verify, "published values against the engine, a line each")
-    one.add_argument("--all", action="store_true", help="also the lines that agree")
+    add("verify", _verify, "published values against the engine, a line each")
 
     one = add("journal", _journal, "recompute the hash chain of a journal")
     one.add_argument("check", choices=("check",))
@@ -197,20 +200,46 @@ def _report(chosen: argparse.Namespace) -> None:
 
 
 def _verify(chosen: argparse.Namespace) -> int:
-    from engine.verify import verify_lines
+    from engine.physics.published import verify_lines
+    from engine.physics.validation import results, strict_agreement
 
-    lines = list(verify_lines())
-    wrong = [line for line in lines if not line.agrees]
+    lines = verify_lines()
     for line in lines:
-        if chosen.all or not line.agrees or sys.stdout.isatty() or True:
-            print(line.text())
-    print(f"{len(lines) - len(wrong)} of {len(lines)} published values agree")
-    return FAULT if wrong else DONE
+        print(line.text)
+    out = sum(not line.ok for line in lines)
+    print(f"\n{len(lines) - out} of {len(lines)} published values agree\n")
+    print("Bench results beside the estimate (calibration rows were fitted):")
+    for result in results():
+        print(_bench_line(result))
+    found = strict_agreement()
+    print(
+        f"\nNever fitted, condition known: {found.inside} of {found.rows} inside the "
+        f"band; rms error {found.rms_logit:.2f} on the logit scale, bias "
+        f"{found.bias_logit:+.2f}; published orders {found.right} right, "
+        f"{found.wrong} wrong of {found.pairs}"
+    )
+    return FAULT if out else DONE
+
+
+def _bench_line(result: Result) -> str:
+    row = result.row
+    head = f"{row.kind:<12} {row.study:<15} {row.condition[:60]:<60}"
+    if result.is_inside is None:
+        return (
+            f"{head} observed {row.observed_frac:6.1%}   no estimate: {result.why_not}"
+        )
+    inside = "inside" if result.is_inside else "OUTSIDE"
+    return (
+        f"{head} observed {row.observed_frac:6.1%}   estimate {result.estimate:6.1%} "
+        f"({result.low:.1%} to {result.high:.1%})   {inside}"
+    )
 
 
 def _journal(chosen: argparse.Namespace) -> None:
     from engine.journal import open_journal
 
+    if not chosen.file.exists():
+        raise UnknownId(f"there is no journal {chosen.file}")
     journal = open_journal(chosen.file)
     journal.check()
     count = len(list(journal.entries()))
@@ -220,7 +249,7 @@ def _journal(chosen: argparse.Namespace) -> None:
 def _scenario(name_or_path: str | None):
     if name_or_path is None:
         return None
-    from engine.replay import find_scenario
+    from engine.reviews.scenario import find_scenario
 
     return find_scenario(name_or_path)
 
