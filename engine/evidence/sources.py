@@ -562,3 +562,29 @@ CALIBRATION_FIT = Source(
     title="Fit to the calibration studies of bench_delivery.csv",
     known="fitted",
 )
+ANHOEJ_2014 = Source(
+    key="ANHOEJ_2014",
+    authors="Anhoej J, Olesen AV",
+    year=2014,
+    title="Run charts revisited: a simulation study of run chart rules for detection "
+    "of non-random variation in health care processes",
+    journal="PLoS ONE 9:e113825",
+    address="https://doi.org/10.1371/journal.pone.0113825",
+    known="read",
+)
+NELSON_1994 = Source(
+    key="NELSON_1994",
+    authors="Nelson LS",
+    year=1994,
+    title="A control chart for parts-per-million nonconforming items",
+    journal="Journal of Quality Technology 26:166",
+    known="from memory",
+)
+NIST_HANDBOOK = Source(
+    key="NIST_HANDBOOK",
+    authors="NIST/SEMATECH",
+    year=2012,
+    title="e-Handbook of statistical methods, chapter 6",
+    address="https://www.itl.nist.gov/div898/handbook/",
+    known="read",
+)
