@@ -185,3 +185,31 @@ POINTS_TO_TEST_COUNT = Number(
     known="ours",
     note="a practice value; no source read",
 )
+WEIGHT_UNANIMOUS_RATIO = Number(
+    value=1.0,
+    unit="ratio",
+    source=OURS,
+    where="weight of a flag all sources agree on; the department may set its own",
+    known="ours",
+)
+WEIGHT_MAJORITY_RATIO = Number(
+    value=0.8,
+    unit="ratio",
+    source=OURS,
+    where="weight of a flag most sources support",
+    known="ours",
+)
+WEIGHT_DEPARTMENT_RATIO = Number(
+    value=0.5,
+    unit="ratio",
+    source=OURS,
+    where="weight of a flag that rests on the department's own table or limit",
+    known="ours",
+)
+WEIGHT_CONTESTED_RATIO = Number(
+    value=0.2,
+    unit="ratio",
+    source=OURS,
+    where="weight of a flag on which sources differ",
+    known="ours",
+)

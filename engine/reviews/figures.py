@@ -52,6 +52,11 @@ def signed(value: float) -> str:
     return f"{'−' if value < 0 else '+'}{significant(abs(value))}"
 
 
+def inside(title: str) -> str:
+    """A title inside a sentence; what begins in capitals stays so."""
+    return title if title[:2].isupper() else f"{title[0].lower()}{title[1:]}"
+
+
 def month_words(month: str) -> str:
     """``2026-10`` as ``October 2026``.
 

@@ -10,7 +10,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Literal
+from typing import Literal, TypedDict
 
 from engine.evidence.review import (
     CONFIRMED_START_FRAC,
@@ -28,6 +28,13 @@ from engine.evidence.review import (
 from engine.evidence.shape import Number
 
 Kind = Literal["treatments", "counted", "rate", "amount"]
+
+
+class Counting(TypedDict):
+    """The two SQL conditions of an indicator of treatments."""
+
+    asked: str
+    hit: str
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -63,7 +70,7 @@ class Indicator:
         return self.kind in {"treatments", "counted"}
 
 
-def _fires(rule: str) -> dict[str, str]:
+def _fires(rule: str) -> Counting:
     """Counts where the rule fires, among those it could tell about."""
     return {
         "asked": f"{rule} <> 'not_asked'",
@@ -71,7 +78,7 @@ def _fires(rule: str) -> dict[str, str]:
     }
 
 
-def _silent(rule: str) -> dict[str, str]:
+def _silent(rule: str) -> Counting:
     """Counts where the rule is silent."""
     return {
         "asked": f"{rule} <> 'not_asked'",
@@ -79,13 +86,17 @@ def _silent(rule: str) -> dict[str, str]:
     }
 
 
-def _none_fires(rules: Sequence[str]) -> dict[str, str]:
-    """Counts where no rule fires; one that fires settles it, else one unknown does."""
+def _none_fires(rules: Sequence[str]) -> Counting:
+    """Counts where no rule fires, among those where all that were asked could tell.
+
+    A rule that fires beside one that cannot tell settles nothing: counting it would
+    let only what is against the setup through.
+    """
     told = ", ".join(rules)
     return {
         "asked": " OR ".join(f"{rule} <> 'not_asked'" for rule in rules),
-        "hit": f"CASE WHEN 'fires' IN ({told}) THEN false"
-        f" WHEN 'cannot_tell' IN ({told}) THEN NULL ELSE true END",
+        "hit": f"CASE WHEN 'cannot_tell' IN ({told}) THEN NULL"
+        f" ELSE 'fires' NOT IN ({told}) END",
     }
 
 
@@ -147,7 +158,7 @@ INDICATORS: tuple[Indicator, ...] = (
         sentence="Filter, HME, site, gas and timing all agreed in {value}",
         kind="treatments",
         wanted="up",
-        of="treatments with at least one of these to ask about",
+        of="treatments where each of these that applies is known",
         rules=_SETUP_RULES,
         basis="All of I01 to I03, gas source and timing together.",
         **_none_fires(_SETUP_RULES),

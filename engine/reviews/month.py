@@ -15,7 +15,13 @@ from engine.errors import NothingToReview
 from engine.journal import Journal
 from engine.replay import Replay
 from engine.reviews import month_rows as rows
-from engine.reviews.figures import month_after, month_words, months_between, percent
+from engine.reviews.figures import (
+    inside,
+    month_after,
+    month_words,
+    months_between,
+    percent,
+)
 from engine.reviews.indicators import BY_ID, INDICATORS, OF_TREATMENTS, Indicator
 from engine.reviews.month_journal import (
     Confirmations,
@@ -121,8 +127,8 @@ def review_month(
     months = months_between(str(everyone.index[0]), str(everyone.index[-1]))
     lines = _lines(replay, counts, months, month, unit, journal)
     named = {each.indicator.id: each for each in lines}
-    treatments = int(everyone.loc[month, "known"])
-    patients = int(everyone.loc[month, "patients"])
+    treatments = int(everyone["known"][month])
+    patients = int(everyone["patients"][month])
     flags = _flags(replay, month, unit, treatments)
     since, until = _reach(replay, month)
     period = {"since": since, "until": until}
@@ -469,7 +475,7 @@ def _changed(lines: tuple[Line, ...]) -> str:
 
 def _sure(lines: tuple[Line, ...]) -> str:
     dim = [
-        f"{_inside(each.indicator.title)} ({percent(each.unknown_frac)} unknown)"
+        f"{inside(each.indicator.title)} ({percent(each.unknown_frac)} unknown)"
         for each in lines
         if each.known + each.unknown and each.unknown_frac > 0.2
     ]
@@ -507,11 +513,6 @@ def _to_decide(
             " before acting on them."
         )
     return tuple(asked[:6])
-
-
-def _inside(title: str) -> str:
-    """A title inside a sentence; what is all capitals stays so."""
-    return title if title[:2].isupper() else f"{title[0].lower()}{title[1:]}"
 
 
 def _past(indicator: Indicator) -> str:
