@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
+from engine.batch import COLUMNS
 from engine.columns import FRACTIONS
 from engine.reviews.topic_catalogue import TOPICS
-from engine.rules import ALL_RULES
 
 PERIOD = """
   ($since IS NULL OR local_month >= $since)
@@ -78,16 +78,16 @@ SELECT coalesce(unit_token, 'unknown') AS unit_token, shift, {_sums()}
 FROM stated GROUP BY 1, 2 ORDER BY 1, 2
 """
 
+_WEEKLY = ", ".join(
+    f"count(*) FILTER ({topic.id} = 1) AS {topic.id}_flagged,"
+    f" count({topic.id}) AS {topic.id}_asked"
+    for topic in TOPICS
+)
+
 WEEKS = f"""{_STATED}
 SELECT date_trunc('week', timezone($zone, started_at AT TIME ZONE 'UTC'))::DATE
          AS week,
-       coalesce(unit_token, 'unknown') AS unit_token,
-       {
-    ", ".join(
-        f"count(*) FILTER ({t.id} = 1) AS {t.id}_flagged, count({t.id}) AS {t.id}_asked"
-        for t in TOPICS
-    )
-}
+       coalesce(unit_token, 'unknown') AS unit_token, {_WEEKLY}
 FROM stated GROUP BY 1, 2 ORDER BY 1, 2
 """
 
@@ -116,6 +116,11 @@ _ESTIMATES = ", ".join(
     f"{name}_frac, {name}_low_frac, {name}_high_frac" for name in FRACTIONS
 )
 
+_SHOWN = ", ".join(
+    f"{name}::VARCHAR AS {name}" if COLUMNS[name].kind == "word" else name
+    for name in EXAMPLE_COLUMNS
+)
+
 # Two setups that stand for many: the commonest flagged setup, then the commonest at
 # another site or unit; never one that fewer patients share than a cell needs.
 EXAMPLES = f"""
@@ -137,30 +142,7 @@ own AS (
   WINDOW alike AS (PARTITION BY generator, site, humidification, hme_state,
                    expiratory_filter)
 )
-SELECT {
-    ", ".join(
-        f"{name}::VARCHAR AS {name}"
-        if name
-        in (
-            "drug_class",
-            "generator",
-            "synchrony",
-            "gas_source",
-            "circuit",
-            "site",
-            "humidification",
-            "hme_state",
-            "airway",
-            "mode",
-            "expiratory_filter",
-            "shift",
-            "filter_trend",
-            "sensor_last_outcome",
-        )
-        else name
-        for name in EXAMPLE_COLUMNS
-    )
-},
+SELECT {_SHOWN},
        treatment_id, filter_in_use_id, alike_count, alike_patients, delivered_frac,
        delivered_low_frac, delivered_high_frac, best_site, best_delivered_frac,
        best_ratio, difference_shown, {_ESTIMATES}
@@ -171,5 +153,3 @@ ORDER BY alike_count DESC, generator, site LIMIT $most
 USUAL_VOLUME = f"""
 SELECT median(tidal_volume_ml) AS usual_ml FROM asked WHERE {PERIOD}
 """
-
-RULE_IDS = tuple(rule.id for rule in ALL_RULES)

@@ -76,7 +76,8 @@ class Example:
 class Sheet:
     """One chosen topic, ready for a handout.
 
-    ``places``   unit_token, shift, flagged, unknown, asked, patients, share_frac, hidden
+    ``places``   unit_token, shift, flagged, unknown, asked, patients, share_frac,
+                 hidden
     ``rules``    rule_id, title, question, flags, treatments, patients, strength
     """
 
@@ -320,7 +321,7 @@ def _where(grid: pd.DataFrame, flagged: int, asked: int) -> str:
         top["flagged"], top["asked"], flagged - top["flagged"], rest_asked
     )
     place = f"unit {top['unit_token']}, {top['shift']} shift"
-    share = f"{percent(top['share_frac'])} of {int(top['told']):,}"
+    share = f"{percent(top['share_frac'])} of {int(top['asked']):,}"
     if low > 0:
         rest = percent((flagged - top["flagged"]) / rest_asked)
         return f"Most often in {place}: {share}, against {rest} elsewhere."
