@@ -21,7 +21,7 @@ def percent(share: float, places: int | None = None) -> str:
 
 
 def percent_range(low: float, high: float) -> str:
-    """``66 to 76 %``."""
+    """``66 to 76 %``; as many places as tell the two ends apart."""
     return f"{_plain(100 * low)} to {_plain(100 * high)} %"
 
 

@@ -11,6 +11,7 @@ import numpy as np
 import pandas as pd
 
 from engine.errors import NothingToReview
+from engine.evidence.filter import INTERVAL_COVER_FRAC
 from engine.evidence.review import (
     PATIENT_CAP_FRAC,
     TOPICS_COUNT,
@@ -20,6 +21,7 @@ from engine.evidence.review import (
     WEIGHT_UNANIMOUS_RATIO,
 )
 from engine.evidence.shape import Number, Source
+from engine.evidence.sources import OURS
 from engine.journal import Journal
 from engine.replay import Replay
 from engine.reviews import topic_rows as rows
@@ -317,13 +319,14 @@ def _where(grid: pd.DataFrame, flagged: int, asked: int) -> str:
     rest_asked = asked - top["asked"]
     if rest_asked <= 0:
         return "Seen in one unit and shift only, where all treatments were given."
-    _, low, _ = newcombe(
-        top["flagged"], top["asked"], flagged - top["flagged"], rest_asked
-    )
+    # The highest of many is picked after looking: its interval allows for all of them.
+    cover = 1 - (1 - float(INTERVAL_COVER_FRAC)) / len(seen)
+    rest_flagged = flagged - top["flagged"]
+    _, low, _ = newcombe(top["flagged"], top["asked"], rest_flagged, rest_asked, cover)
     place = f"unit {top['unit_token']}, {top['shift']} shift"
     share = f"{percent(top['share_frac'])} of {int(top['asked']):,}"
     if low > 0:
-        rest = percent((flagged - top["flagged"]) / rest_asked)
+        rest = percent(rest_flagged / rest_asked)
         return f"Most often in {place}: {share}, against {rest} elsewhere."
     return f"No unit and shift stands out; the highest is {place} ({share})."
 
@@ -369,7 +372,9 @@ def _against(topic: Topic) -> tuple[str, ...]:
 def _cited(evidence: tuple[Number | Source, ...]) -> str:
     parts = []
     for each in evidence:
-        if isinstance(each, Source):
+        if each is OURS or (not isinstance(each, Source) and each.source is OURS):
+            parts.append("the department's and this project's own choice")
+        elif isinstance(each, Source):
             parts.append(cited(each))
         else:
             where = each.where.split(";")[0].removeprefix("abstract: ")
