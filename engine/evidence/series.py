@@ -5,6 +5,7 @@ from engine.evidence.sources import (
     ANHOEJ_2014,
     NELSON_1994,
     NIST_HANDBOOK,
+    SPIEGELHALTER_2005,
 )
 
 SIGMAS_RATIO = Number(
@@ -42,4 +43,11 @@ TIME_POWER_RATIO = Number(
     where="hours between events to this power's root are nearly normal",
     known="read",
     note="read in a textbook that applies it",
+)
+WINSORISED_FRAC = Number(
+    value=0.10,
+    unit="frac",
+    source=SPIEGELHALTER_2005,
+    where="share of units pulled in at either end before dispersion is judged",
+    known="from memory",
 )

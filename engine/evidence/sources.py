@@ -588,3 +588,11 @@ NIST_HANDBOOK = Source(
     address="https://www.itl.nist.gov/div898/handbook/",
     known="read",
 )
+SPIEGELHALTER_2005 = Source(
+    key="SPIEGELHALTER_2005",
+    authors="Spiegelhalter DJ",
+    year=2005,
+    title="Funnel plots for comparing institutional performance",
+    journal="Statistics in Medicine 24:1185",
+    known="from memory",
+)
