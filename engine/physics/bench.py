@@ -132,7 +132,9 @@ def _percent(text: str) -> float:
 def _treatments(row: dict[str, str], changed: str) -> tuple[dict[str, object], ...]:
     """One treatment for each site; ``changed`` reads ``column=value;column=value``."""
     merged = dict(row)
-    merged.update(part.split("=", 1) for part in changed.split(";") if part)
+    for part in filter(None, changed.split(";")):
+        name, _, value = part.partition("=")
+        merged[name] = value
     values: dict[str, object] = {}
     for name, text in merged.items():
         column = _COLUMNS.get(name)

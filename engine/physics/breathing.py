@@ -9,7 +9,6 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import ArrayLike
 
 from engine.evidence import droplet, lung
 from engine.physics.air import coefficients
@@ -22,6 +21,7 @@ from engine.physics.lung import (
     SUBJECTS,
     Breath,
     Subject,
+    Values,
     diffusion_cm2_per_s,
     filters,
     reach_of,
@@ -57,9 +57,7 @@ class Regions:
         }
 
 
-def inhalable_frac(
-    aerodynamic_um: ArrayLike, wind_m_per_s: ArrayLike = 0.0
-) -> np.ndarray:
+def inhalable_frac(aerodynamic_um: Values, wind_m_per_s: Values = 0.0) -> np.ndarray:
     """Share of the particles in the air that enters nose or mouth.
 
     Source   ICRP_66 equation 12.
@@ -75,9 +73,9 @@ def inhalable_frac(
 
 
 def breathing_deposition(
-    aerodynamic_um: ArrayLike,
-    tidal_ml: ArrayLike,
-    flow_ml_per_s: ArrayLike,
+    aerodynamic_um: Values,
+    tidal_ml: Values,
+    flow_ml_per_s: Values,
     subject: Subject | str = "male",
     nose_share: float = 1.0,
     density_g_per_cm3: float = 3.0,
@@ -112,14 +110,14 @@ def breathing_deposition(
 
 
 def breathing_deposition_polydisperse(
-    amad_um: ArrayLike,
+    amad_um: Values,
     tidal_ml: float,
     flow_ml_per_s: float,
     subject: Subject | str = "male",
     nose_share: float = 1.0,
     density_g_per_cm3: float = 3.0,
     shape_factor: float = 1.5,
-    gsd: ArrayLike | None = None,
+    gsd: Values | None = None,
     wind_m_per_s: float = 0.0,
 ) -> Regions:
     """Regional deposition of a lognormal aerosol, as the published tables give it.
@@ -150,7 +148,7 @@ def breathing_deposition_polydisperse(
     return Regions(*(part @ weights for part in vars(each).values()))
 
 
-def workplace_gsd(thermal_median_um: ArrayLike) -> np.ndarray:
+def workplace_gsd(thermal_median_um: Values) -> np.ndarray:
     """Spread of an aerosol nobody measured.
 
     Source   ICRP_66 equation 16.
@@ -160,7 +158,7 @@ def workplace_gsd(thermal_median_um: ArrayLike) -> np.ndarray:
     return 1 + rise * (1 - 1 / (scale * d**power + 1))
 
 
-def reference_worker_deposition(amad_um: ArrayLike) -> Regions:
+def reference_worker_deposition(amad_um: Values) -> Regions:
     """Sitting and light exercise weighted by the air breathed in each.
 
     Checked  engine/evidence/published/physics_values.csv
@@ -185,8 +183,8 @@ def reference_worker_deposition(amad_um: ArrayLike) -> Regions:
 def _by_path(
     d_ae: np.ndarray,
     d_th: np.ndarray,
-    tidal_ml: ArrayLike,
-    flow: ArrayLike,
+    tidal_ml: Values,
+    flow: Values,
     subject: Subject,
     nose_share: float,
     wind: float,
@@ -206,8 +204,8 @@ def _through(
     d_th: np.ndarray,
     front: np.ndarray,
     back: np.ndarray,
-    tidal_ml: ArrayLike,
-    flow: ArrayLike,
+    tidal_ml: Values,
+    flow: Values,
     subject: Subject,
 ) -> tuple[np.ndarray, ...]:
     """The chain of nine filters: front, back, BB, bb, AI, bb, BB, back, front."""
@@ -243,8 +241,8 @@ def _through(
 def _nose(
     d_ae: np.ndarray,
     d_th: np.ndarray,
-    tidal_ml: ArrayLike,
-    flow: ArrayLike,
+    tidal_ml: Values,
+    flow: Values,
     share: float,
     subject: Subject,
 ) -> tuple[np.ndarray, np.ndarray]:
@@ -269,8 +267,8 @@ def _nose(
 def _mouth(
     d_ae: np.ndarray,
     d_th: np.ndarray,
-    tidal_ml: ArrayLike,
-    flow: ArrayLike,
+    tidal_ml: Values,
+    flow: Values,
     share: float,
     subject: Subject,
 ) -> tuple[np.ndarray, np.ndarray]:
@@ -299,7 +297,7 @@ def _joined(aerodynamic: np.ndarray, thermal: np.ndarray) -> np.ndarray:
 # --- fits to the whole model, for quick comparison -------------------------------
 
 
-def hinds1999_deposition(diameter_um: ArrayLike) -> dict[str, np.ndarray]:
+def hinds1999_deposition(diameter_um: Values) -> dict[str, np.ndarray]:
     """Average deposition of people breathing: inhalable, HA, TB, AL and total.
 
     Holds    unit-density spheres, averaged over sexes and three activity levels.

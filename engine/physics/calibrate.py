@@ -22,51 +22,65 @@ from scipy.special import expit, logit, ndtri
 
 from engine import evidence
 from engine.evidence import fit
+from engine.evidence.shape import Number
 from engine.physics.air import coefficients
 from engine.physics.bench import BenchRow, batch_of, bench_rows
 from engine.physics.constants import FITTED, Constants
 from engine.physics.estimate import estimate
 from engine.physics.setup import Setup, setup_of, stacked
 
-# field of Constants -> (name in the evidence, what it is); one scale: log or logit
-_LOG = {"settling_ratio"}
-FREE: dict[str, tuple[str, str]] = {
+# field of Constants -> (name in the evidence, what it is, what was expected)
+_LOG = {"settling_ratio"}  # fitted on the log scale, the others as logits
+FREE: dict[str, tuple[str, str, Number]] = {
     "settling_ratio": (
         "SETTLING_MULTIPLIER_RATIO",
         "settling in the limb over well-mixed settling",
+        fit.SETTLING_RATIO_PRIOR_COEF,
     ),
     "humid_frac": (
         "HUMID_SURVIVAL_FRAC",
         "dose through an actively humidified circuit over dry gas",
+        fit.HUMID_FRAC_PRIOR_COEF,
     ),
-    "wye_frac": ("WYE_SURVIVAL_FRAC", "aerosol that passes Y and connectors"),
+    "wye_frac": (
+        "WYE_SURVIVAL_FRAC",
+        "aerosol that passes Y and connectors",
+        fit.WYE_FRAC_PRIOR_COEF,
+    ),
     "chamber_frac": (
         "CHAMBER_SURVIVAL_FRAC",
         "aerosol that passes the humidifier chamber",
+        fit.CHAMBER_FRAC_PRIOR_COEF,
     ),
     "vibrating_mesh_frac": (
         "MESH_EMITTED_FRAC",
         "nominal dose leaving the generator as aerosol",
+        fit.VIBRATING_MESH_FRAC_PRIOR_COEF,
     ),
     "ultrasonic_frac": (
         "ULTRASONIC_EMITTED_FRAC",
         "nominal dose leaving the generator as aerosol",
+        fit.ULTRASONIC_FRAC_PRIOR_COEF,
     ),
     "pmdi_spacer_frac": (
         "INHALER_EMITTED_FRAC",
         "label dose leaving the spacer as aerosol",
+        fit.PMDI_SPACER_FRAC_PRIOR_COEF,
     ),
     "jet_frac": (
         "JET_EMITTED_FRAC",
         "nominal dose leaving the generator as aerosol",
+        fit.JET_FRAC_PRIOR_COEF,
     ),
     "pulsed_jet_frac": (
         "PULSED_JET_EMITTED_FRAC",
         "nominal dose leaving a jet driven in inspiration only",
+        fit.PULSED_JET_FRAC_PRIOR_COEF,
     ),
     "breath_enhanced_jet_frac": (
         "BREATH_ENHANCED_EMITTED_FRAC",
         "nominal dose leaving the generator as aerosol",
+        fit.BREATH_ENHANCED_JET_FRAC_PRIOR_COEF,
     ),
 }
 
@@ -192,7 +206,7 @@ def tanks_profile(data: Data, counts: Sequence[float]) -> dict[float, float]:
 
 
 def _priors(names: Sequence[str]) -> tuple[np.ndarray, np.ndarray]:
-    pairs = [coefficients(getattr(fit, f"{name.upper()}_PRIOR_COEF")) for name in names]
+    pairs = [coefficients(FREE[name][2]) for name in names]
     medians = [_scaled(name, pair[0]) for name, pair in zip(names, pairs, strict=True)]
     return np.array(medians), np.array([pair[1] for pair in pairs])
 
@@ -236,7 +250,7 @@ def evidence_text(found: Fit, spread: float, within: float) -> str:
             note="4 to 16 fit about as well",
         )
     )
-    for (field, (name, where)), middle, width in zip(
+    for (field, (name, where, _)), middle, width in zip(
         FREE.items(), found.middle, found.spread, strict=True
     ):
         parts.append(

@@ -12,7 +12,7 @@ import json
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from importlib import resources
-from typing import Any
+from typing import Any, TypeAlias
 
 import numpy as np
 
@@ -26,6 +26,7 @@ CLEARANCE_TOLERANCE_MIN = 0.6  # the table rounds to whole minutes
 ML_PER_S_PER_LPM = ML_PER_L / S_PER_MIN
 
 Inputs = dict[str, Any]
+Values: TypeAlias = np.ndarray | float
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -151,12 +152,12 @@ def _clearance_lines() -> Iterator[VerifyLine]:
 # --- droplets and air ------------------------------------------------------------
 
 
-def _slip(i: Inputs) -> float:
+def _slip(i: Inputs) -> Values:
     law = i.get("law", droplets.DEFAULT_SLIP)
     return droplets.slip_correction(i["d_um"], i["lambda_um"], law)
 
 
-def _hinds_slip(i: Inputs) -> float:
+def _hinds_slip(i: Inputs) -> Values:
     return droplets.slip_correction(i["d_um"], i["lambda_um"], "hinds1999")
 
 
@@ -170,7 +171,7 @@ def _gas(i: Inputs) -> tuple[float, float]:
     return viscosity, i.get("lambda_um", air.mean_free_path_um(kelvin))
 
 
-def _slip_of(i: Inputs) -> float:
+def _slip_of(i: Inputs) -> Values:
     """Slip given as a number, or by the name of its law."""
     slip = i.get("slip", droplets.DEFAULT_SLIP)
     if not isinstance(slip, str):
@@ -179,34 +180,34 @@ def _slip_of(i: Inputs) -> float:
     return droplets.slip_correction(i["d_um"], _gas(i)[1], law)
 
 
-def _relaxation(i: Inputs) -> float:
+def _relaxation(i: Inputs) -> Values:
     density = i.get("rho", float(droplet.WATER_KG_PER_M3))
     return droplets.relaxation_time_s(i["d_um"], _slip_of(i), _gas(i)[0], density)
 
 
-def _settling(i: Inputs) -> float:
+def _settling(i: Inputs) -> Values:
     density = i.get("rho", float(droplet.WATER_KG_PER_M3))
     return droplets.settling_velocity_m_per_s(
         i["d_um"], _slip_of(i), _gas(i)[0], density
     )
 
 
-def _stopping(i: Inputs) -> float:
+def _stopping(i: Inputs) -> Values:
     return droplets.stopping_distance_m(_relaxation(i), i["v0"])
 
 
-def _stokes(i: Inputs) -> float:
+def _stokes(i: Inputs) -> Values:
     return droplets.stokes_number(_relaxation(i), i["U"], i["D"])
 
 
-def _diffusion(i: Inputs) -> float:
+def _diffusion(i: Inputs) -> Values:
     viscosity, _ = _gas(i)
     return droplets.diffusion_coefficient_m2_per_s(
         i["d_um"], _slip_of(i), viscosity, i["T_K"]
     )
 
 
-def _aerodynamic(i: Inputs) -> float:
+def _aerodynamic(i: Inputs) -> Values:
     return droplets.aerodynamic_diameter_um(
         i["d_um"], i["rho_gcc"], i["chi"], i["lambda_um"]
     )
@@ -222,19 +223,19 @@ def _mean_over_sizes(
 # --- limb and tube ---------------------------------------------------------------
 
 
-def _laminar(i: Inputs) -> float:
+def _laminar(i: Inputs) -> Values:
     return limb.settled_laminar_frac(
         i["v_ts"], i["L_m"], i["U"], i["D_m"], i.get("theta", 0)
     )
 
 
-def _mixed(i: Inputs) -> float:
+def _mixed(i: Inputs) -> Values:
     return limb.settled_mixed_frac(
         i["v_ts"], i["L_m"], i["U"], i["D_m"], i.get("theta", 0)
     )
 
 
-def _airway(i: Inputs) -> float:
+def _airway(i: Inputs) -> Values:
     return tube.lost_frac(
         i["d_um"],
         i["Q_lpm"],
@@ -246,7 +247,7 @@ def _airway(i: Inputs) -> float:
     )
 
 
-def _infant_tube(i: Inputs) -> float:
+def _infant_tube(i: Inputs) -> Values:
     return _mean_over_sizes(
         i["mmad_um"],
         i["gsd_assumed"],
@@ -256,7 +257,7 @@ def _infant_tube(i: Inputs) -> float:
     )
 
 
-def _limb_and_tube(i: Inputs) -> float:
+def _limb_and_tube(i: Inputs) -> Values:
     """1.5 m of 22 mm tubing and an 8 mm tube at 30 L/min, two seconds parked."""
     limb_m, bore_m, flow_lpm, parked_s = 1.5, 0.022, 30.0, 2.0
     velocity = tube.mean_velocity_m_per_s(flow_lpm, bore_m / tube.M_PER_MM)
@@ -275,7 +276,7 @@ def _limb_and_tube(i: Inputs) -> float:
 
 
 def _breath(i: Inputs) -> lung.Breath:
-    flow = i.get("V_ml_s")
+    flow: float = i.get("V_ml_s", 0.0)
     return lung.Breath(
         tidal_ml=i["VT_ml"],
         inspiratory_ml_per_s=i.get("Vi_ml_s", flow),
@@ -296,7 +297,7 @@ def _part(found: lung.Deposition, region: str) -> np.ndarray:
     }[region]
 
 
-def _intubated(region: str, i: Inputs) -> float:
+def _intubated(region: str, i: Inputs) -> Values:
     subject = lung.SUBJECTS[i.get("subject", "male")]
     if region == "exhaled_slice":
         d = np.asarray(i["d_ae_um"])
@@ -305,7 +306,7 @@ def _intubated(region: str, i: Inputs) -> float:
     return _part(found, region)
 
 
-def _intubated_poly(region: str, i: Inputs) -> float:
+def _intubated_poly(region: str, i: Inputs) -> Values:
     subject = lung.SUBJECTS[i.get("subject", "male")]
     return _mean_over_sizes(
         i["mmad_um"],
@@ -320,7 +321,7 @@ def _nose_share(i: Inputs) -> float:
     return 0.0 if i.get("mode") == "mouth" else 1.0
 
 
-def _icrp_poly(region: str, i: Inputs) -> float:
+def _icrp_poly(region: str, i: Inputs) -> Values:
     found = breathing.breathing_deposition_polydisperse(
         i["amad_um"],
         i["VT_ml"],
@@ -334,7 +335,7 @@ def _icrp_poly(region: str, i: Inputs) -> float:
     return found.by_key()[region]
 
 
-def _icrp_mono(region: str, i: Inputs) -> float:
+def _icrp_mono(region: str, i: Inputs) -> Values:
     found = breathing.breathing_deposition(
         np.asarray(i["d_ae_um"]),
         i["VT_ml"],
@@ -347,18 +348,18 @@ def _icrp_mono(region: str, i: Inputs) -> float:
     return found.by_key()[region]
 
 
-def _worker(region: str, i: Inputs) -> float:
+def _worker(region: str, i: Inputs) -> Values:
     return breathing.reference_worker_deposition(i["amad_um"]).by_key()[region]
 
 
-def _hinds(region: str, i: Inputs) -> float:
+def _hinds(region: str, i: Inputs) -> Values:
     return breathing.hinds1999_deposition(i["d_um"])[region]
 
 
 # --- the split at the Y ----------------------------------------------------------
 
 
-def _y_plug(i: Inputs) -> float:
+def _y_plug(i: Inputs) -> Values:
     cycle = wye.cycle_of(
         tidal_ml=i["VT_ml"],
         inspiratory_s=i["TI_s"],

@@ -10,13 +10,16 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from engine.evidence import room
+from engine.physics.air import coefficients
 from engine.units import MIN_PER_H, ML_PER_L, S_PER_H
 
-NEAR_FIELD_CAUTION = (
-    "A mixed room: beside the ventilator measured concentrations were several times "
-    "higher."
-)
 L_PER_M3 = ML_PER_L
+UG_PER_MG = ML_PER_L
+NEAR_FIELD_CAUTION = (
+    "The room is taken as mixed. Beside a ventilator without a filter about "
+    f"{float(room.NEAR_FIELD_MG_PER_M3) * UG_PER_MG:.0f} µg/m³ was measured, several "
+    "times what a mixed room gives: nothing here says what somebody there breathes."
+)
 
 
 def removal_per_h(
@@ -88,6 +91,20 @@ def clearance_min(
     """
     decay = -np.log1p(-np.asarray(efficiency_frac, float))
     return MIN_PER_H * decay / np.asarray(air_changes_per_h) * mixing_factor
+
+
+def clearance_range_min(
+    air_changes_per_h: ArrayLike, efficiency_frac: ArrayLike
+) -> tuple[np.ndarray, np.ndarray]:
+    """The same for perfect and for very poor mixing: the real room lies between.
+
+    Source   CDC_2003 Appendix B, note to the table.
+    """
+    perfect, poor = coefficients(room.MIXING_COEF)
+    return (
+        clearance_min(air_changes_per_h, efficiency_frac, perfect),
+        clearance_min(air_changes_per_h, efficiency_frac, poor),
+    )
 
 
 def _risen(k_per_min: np.ndarray, time_min: ArrayLike) -> np.ndarray:

@@ -8,6 +8,7 @@ treatment gets a refusal. Nothing here is a judgement.
 from __future__ import annotations
 
 from dataclasses import dataclass, fields, replace
+from typing import Any
 
 import numpy as np
 
@@ -131,7 +132,7 @@ class Setup:
         }
         return Setup(**chosen, emission=self.emission)
 
-    def but(self, **changed: np.ndarray) -> Setup:
+    def but(self, **changed: Any) -> Setup:
         """The same setup with some fields changed."""
         return replace(self, **changed)
 
@@ -212,7 +213,7 @@ class _Gaps:
         self.bits |= np.where(where, 1 << assumption, 0).astype(np.int32)
 
     def filled(
-        self, values: np.ndarray, default: object, assumption: int
+        self, values: np.ndarray, default: np.ndarray | float, assumption: int
     ) -> np.ndarray:
         missing = np.isnan(values)
         self.note(assumption, missing)

@@ -75,8 +75,9 @@ def compared(setup: Setup, constants: Constants = FITTED) -> dict[str, np.ndarra
     shown = _ratio(mine, best) > float(circuit.SHOWN_DIFFERENCE_RATIO)
     for index, other, _ in other_setups(setup):
         theirs = _everywhere(other, sized.pick(index), constants)
-        np.fmin.at(lows, (slice(None), index), theirs.lows)
-        np.fmax.at(highs, (slice(None), index), theirs.highs)
+        for row in range(len(CHOICE_SITES)):
+            np.fmin.at(lows[row], index, theirs.lows[row])
+            np.fmax.at(highs[row], index, theirs.highs[row])
         # A difference that one of the values tried turns round is not shown.
         np.logical_and.at(shown, index, _ratio(theirs, best[index]) > 1)
     return _told(setup, mine, best, shown, lows, highs)

@@ -30,13 +30,14 @@ def other_setups(setup: Setup) -> Iterator[tuple[np.ndarray, Setup, bool]]:
     Yields   which rows, some more than once, how they are set up then, and whether
              tube and lung stay as they are.
     """
-    flows, index = [], []
+    flows: list[np.ndarray] = []
+    lacks: list[np.ndarray] = []
     for gap, lpms in ((BIAS, circuit.BIAS_TRIED_COEF), (LEAK, circuit.LEAK_TRIED_COEF)):
         lacking = np.flatnonzero(setup.lacks(gap))
         for lpm in tried(lpms)[1:]:
-            index.append(lacking)
+            lacks.append(lacking)
             flows.append(np.full(len(lacking), lpm * ML_PER_L / S_PER_MIN))
-    rows = np.concatenate(index)
+    rows = np.concatenate(lacks)
     if len(rows):
         yield rows, setup.pick(rows).but(bias_ml_per_s=np.concatenate(flows)), True
     index = np.flatnonzero(setup.lacks(HME))

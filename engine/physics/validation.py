@@ -8,7 +8,9 @@ from itertools import combinations
 
 import numpy as np
 from scipy.special import logit
+from scipy.stats import binom
 
+from engine.evidence import circuit
 from engine.evidence import validation as figures
 from engine.physics.balance import estimated, passages
 from engine.physics.bench import BenchRow, batch_of, bench_rows, contrasts, pool
@@ -92,6 +94,33 @@ class Agreement:
             f"(rank agreement {self.rank_agreement:.2f})"
         )
 
+    @property
+    def missed(self) -> tuple[str, ...]:
+        """The targets of this project that the figures miss, in words."""
+        coverage = float(figures.TARGET_COVERAGE_FRAC)
+        order = float(figures.TARGET_ORDER_RATIO)
+        error = float(figures.TARGET_ERROR_LOGIT)
+        checks = (
+            (self.coverage_frac >= coverage, f"{coverage:.0%} inside the band"),
+            (self.rank_agreement >= order, f"rank agreement of {order:g}"),
+            (self.rms_logit <= error, f"root mean square error of {error:g}"),
+        )
+        return tuple(words for is_met, words in checks if not is_met)
+
+    @property
+    def verdict(self) -> str:
+        """Whether the targets are met, and whether the band is honest, in words."""
+        wanted = float(circuit.BAND_COVER_FRAC)
+        met = f"Missed: {', '.join(self.missed)}." if self.missed else "Targets met."
+        expected = wanted * self.rows
+        wide = binom.sf(self.inside - 1, self.rows, wanted)
+        if wide < float(figures.BAND_TEST_FRAC):
+            return (
+                f"{met} A band of {wanted:.0%} should hold about {expected:.0f} of "
+                f"these {self.rows} results and holds {self.inside}: it is rather wide."
+            )
+        return met
+
 
 def validation_table(constants: Constants = FITTED) -> list[dict[str, object]]:
     """Every numeric bench result: observed, estimate, band, inside or not.
@@ -167,13 +196,18 @@ def _result(row: BenchRow, constants: Constants) -> Result:
     if not values:
         return Result(row=row, why_not=refusal, **nothing)
     ends = {
-        end: pool(row, sum(values[place][i] for place in OUTCOMES[row.outcome]))
+        end: pool(row, _over(values, OUTCOMES[row.outcome], i))
         for i, end in enumerate(("estimate", "low", "high"))
     }
     return Result(row=row, why_not=refusal, **ends)
 
 
 Values = dict[str, tuple[np.ndarray, np.ndarray, np.ndarray]]
+
+
+def _over(values: Values, places: Sequence[str], end: int) -> np.ndarray:
+    """Estimate, low or high of several places together."""
+    return np.sum([values[place][end] for place in places], axis=0)
 
 
 def estimates(
@@ -200,7 +234,7 @@ def _printed_orders(constants: Constants) -> list[Order]:
     for contrast in contrasts():
         values, _ = estimates((contrast.more, contrast.less), "", constants)
         places = OUTCOMES["lung" if contrast.what.startswith("lung") else "delivered"]
-        more, less = sum(values[place][0] for place in places)
+        more, less = _over(values, places, 0)
         found.append(
             Order(
                 study=contrast.study,

@@ -156,10 +156,12 @@ class Arrivals:
         loss = np.asarray(loss_per_s)
         mean_s = np.maximum(self.mean_s, _TINY)
         scale_s = np.maximum(self.variance_s2 / mean_s, _LEAST_VARIANCE * mean_s)
-        values = (self.share, scale_s, mean_s / scale_s)
-        if loss.ndim > self.share.ndim:  # in the precision the losses come in
-            values = tuple(v.astype(loss.dtype)[..., None] for v in values)
-        share, scale_s, power = values
+        share, power = self.share, mean_s / scale_s
+        if loss.ndim > share.ndim:  # in the precision the losses come in
+            share, scale_s, power = (
+                values.astype(loss.dtype)[..., None]
+                for values in (share, scale_s, power)
+            )
         return share * np.exp(-power * np.log(1 + loss * scale_s))
 
 
@@ -231,12 +233,19 @@ def _wide(harmonics: int, nodes: int) -> _Work:
     return work
 
 
+_NARROW = float(wye.NARROW_SPREAD_FRAC)
+_WIDE = float(wye.WIDE_SPREAD_FRAC)
+_WIDEST = float(wye.WIDEST_SPREAD_FRAC)
 # spread of the volume over the breath's, from and below: how the split is summed
 _BY_SPREAD: tuple[tuple[float, float, _Work], ...] = (
-    (0.0, 0.03, _narrow(5)),
-    (0.03, 0.1, _narrow(12)),
-    (0.1, 0.4, _wide(10, 8)),
-    (0.4, np.inf, _wide(4, 0)),
+    (0.0, _NARROW, _narrow(int(wye.NARROW_NODES_COUNT))),
+    (_NARROW, _WIDE, _narrow(int(wye.VOLUME_NODES_COUNT))),
+    (
+        _WIDE,
+        _WIDEST,
+        _wide(int(wye.WIDE_HARMONICS_COUNT), int(wye.WIDE_NODES_COUNT)),
+    ),
+    (_WIDEST, np.inf, _wide(int(wye.WIDEST_HARMONICS_COUNT), 0)),
 )
 
 
@@ -311,7 +320,7 @@ class _Sines:
 # --- the breath in volume and in time --------------------------------------------
 
 
-def _inspiratory_time_s(cycle: Cycle, position_ml: Values) -> np.ndarray:
+def _inspiratory_time_s(cycle: Cycle, position_ml: Values) -> Values:
     """When a position of the inspired gas passes the Y."""
     ratio = cycle.peak_ratio
     if np.ndim(ratio) == 0 and ratio == 1:
@@ -327,7 +336,7 @@ def _inspired_by_ml(cycle: Cycle, time_s: Values) -> np.ndarray:
     return cycle.inspired_ml * s * (cycle.peak_ratio - (cycle.peak_ratio - 1) * s)
 
 
-def _expiratory_time_s(cycle: Cycle, position_ml: Values) -> np.ndarray:
+def _expiratory_time_s(cycle: Cycle, position_ml: Values) -> Values:
     """When a position of the gas swept past the Y passes it."""
     slope = cycle.expiratory_s / cycle.swept_ml
     return cycle.inspiratory_s + (position_ml - cycle.inspired_ml) * slope
@@ -338,7 +347,18 @@ def _swept_by_ml(cycle: Cycle, time_s: Values) -> np.ndarray:
     return cycle.inspired_ml + cycle.swept_ml * share
 
 
-_Clock: TypeAlias = Callable[[Cycle, np.ndarray], np.ndarray]
+def time_s(cycle: Cycle, position_ml: np.ndarray) -> np.ndarray:
+    """When a position of the breath passes the Y, from the start of inspiration."""
+    inspired = np.minimum(position_ml, cycle.inspired_ml)
+    after = np.maximum(position_ml, cycle.inspired_ml)
+    return np.where(
+        position_ml < cycle.inspired_ml,
+        _inspiratory_time_s(cycle, inspired),
+        _expiratory_time_s(cycle, after),
+    )
+
+
+_Clock: TypeAlias = Callable[[Cycle, np.ndarray], Values]
 _Piece: TypeAlias = tuple[np.ndarray, np.ndarray, np.ndarray]
 
 
@@ -483,7 +503,7 @@ def _mixed_ages(parts: Parts, cycle: Cycle, emission: Emission) -> Arrivals:
     run ahead of the mean flow.
     """
     per_ml = cycle.cycle_s / cycle.cycle_ml
-    turn_s = cycle.inspiratory_s - cycle.inspired_ml * per_ml
+    turn_s = np.asarray(cycle.inspiratory_s - cycle.inspired_ml * per_ml)
     window_s = _inspiratory_time_s(cycle, cycle.window_ml) - cycle.window_ml * per_ml
     mean_in_s, variance_in = window_s / 2, window_s**2 / 12
     mean_out_s, variance_out = _ahead(cycle, emission, turn_s)
@@ -527,7 +547,7 @@ def _column(values: Values) -> Values:
 
 
 def _at(values: Values, index: np.ndarray) -> Values:
-    return values[index] if np.ndim(values) else values
+    return values[index] if isinstance(values, np.ndarray) else values
 
 
 def _picked(record: Record, index: np.ndarray) -> Record:
