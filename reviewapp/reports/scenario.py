@@ -1,0 +1,96 @@
+"""A scenario on paper: the change in words, before and after, the cost, what stays."""
+
+from __future__ import annotations
+
+from html import escape
+
+from engine.reviews.figures import percent
+from engine.reviews.scenario import Comparison
+from engine.rules.wording import word
+from reviewapp.reports.incident import _list, _p, table
+from reviewapp.scenario_drawing import filters_svg, outcome_svg
+from reviewapp.svg import LIGHT
+
+
+def scenario_sections(comparison: Comparison) -> list[tuple[str, str]]:
+    """Heading and HTML of each section, in the order they are read."""
+    return [
+        ("What if", _p(comparison.sentence)),
+        ("The change", _change(comparison)),
+        ("Before and after", _outcomes(comparison)),
+        ("Filters it takes", _filters(comparison)),
+        ("Flags", rules_table(comparison)),
+        ("What it would not change", _list(comparison.unchanged)),
+        ("Read this with it", _list(comparison.cautions)),
+    ]
+
+
+def _change(comparison: Comparison) -> str:
+    parts = []
+    if comparison.scenario.note:
+        parts.append(_p(comparison.scenario.note))
+    parts.append(_p(comparison.change))
+    if len(comparison.settings):
+        rows = [
+            (row["key"].replace("_", " "), row["before"], row["after"])
+            for row in comparison.settings.to_dict("records")
+        ]
+        parts.append(table(("Setting", "As it was", "Would be"), rows, " rr"))
+    return "".join(parts)
+
+
+def _outcomes(comparison: Comparison) -> str:
+    drawn = "".join(
+        f"<h3>{escape(each.title)}</h3>"
+        f'<div style="max-width:640px">{outcome_svg(each, LIGHT)}</div>'
+        f"{_p(each.says)}"
+        for each in comparison.outcomes
+    )
+    return drawn + classes_table(comparison)
+
+
+def classes_table(comparison: Comparison) -> str:
+    """Median share past the tube by drug class; small classes left out."""
+    rows = [
+        (
+            word("drug_class", str(row["drug_class"] or "unknown")),
+            f"{row['treatments']:,}",
+            percent(row["before_frac"]),
+            percent(row["after_frac"]),
+            f"{row['before_mg'] / row['treatments']:.3g}",
+            f"{row['after_mg'] / row['treatments']:.3g}",
+        )
+        for row in comparison.by_class.to_dict("records")
+    ]
+    heads = ("Drug class", "Treatments", "Median past the tube", "would be")
+    return table((*heads, "mg a treatment", "would be"), rows, " rrrrr")
+
+
+def _filters(comparison: Comparison) -> str:
+    drawn = f'<div style="max-width:640px">{filters_svg(comparison, LIGHT)}</div>'
+    return drawn + _p(comparison.filters_sentence)
+
+
+def rules_table(comparison: Comparison, changed_only: bool = True) -> str:
+    """Flags before and after, the most changed first."""
+    rules = comparison.rules
+    moved = (rules["difference"] != 0) | (
+        rules["unknown_before"] != rules["unknown_after"]
+    )
+    shown = rules[moved] if changed_only else rules
+    if shown.empty:
+        return _p("No rule would answer otherwise.")
+    rows = [
+        (
+            row["rule_id"],
+            row["title"],
+            f"{row['before']:,}",
+            f"{row['after']:,}",
+            f"{row['difference']:+,}".replace("-", "−"),
+            f"{row['unknown_before']:,}",
+            f"{row['unknown_after']:,}",
+        )
+        for row in shown.to_dict("records")
+    ]
+    heads = ("Rule", "Question", "Flags", "would be", "Difference", "Cannot tell")
+    return table((*heads, "would be"), rows, "  rrrrr")

@@ -1,0 +1,147 @@
+"""The topic handout: one sheet a topic, safe to hang on a wall.
+
+No dates, no tokens of patients or devices, no treatment ids; small cells stay hidden.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from html import escape
+from typing import Any
+
+from engine.reviews.sessions import Session
+from engine.reviews.topics import Example, Sheet, Topics
+from engine.reviews.wording import counted
+from engine.rules.wording import word
+from reviewapp.reports.incident import _list, _p, table
+from reviewapp.svg import LIGHT
+from reviewapp.topic_drawing import places_svg, ranking_svg, weeks_svg
+
+Draw = Callable[[Example], str]
+
+
+def topic_sections(review: Topics, draw: Draw | None = None) -> list[tuple[str, str]]:
+    """Heading and HTML of each section; ``draw`` gives the circuit of an example."""
+    sheets = [
+        (f"{number}. {sheet.topic.title}", sheet_html(sheet, draw))
+        for number, sheet in enumerate(review.sheets, start=1)
+    ]
+    return [
+        ("Topics", _p(review.sentence)),
+        *sheets,
+        ("How they were chosen", _choice(review)),
+        ("What past sessions show", sessions_html(review.sessions)),
+        ("Read this with it", _list(review.cautions)),
+    ]
+
+
+def sheet_html(sheet: Sheet, draw: Draw | None = None, colours=LIGHT) -> str:
+    """One topic: seen, where, why, both sides, two circuits, a system change."""
+    parts = [
+        _p(sheet.sentence),
+        f"<p><small>{escape(sheet.seen)}</small></p>",
+        "<h3>Where</h3>",
+        _p(sheet.where),
+        f'<div style="max-width:460px">{places_svg(sheet, colours)}</div>',
+        "<h3>Why it matters</h3>",
+        _p(sheet.topic.why),
+        _list(sheet.evidence),
+    ]
+    if sheet.against:
+        parts += ["<h3>The other side</h3>", _list(sheet.against)]
+    parts += ["<h3>What the department has written down</h3>", _p(sheet.table)]
+    for number, example in enumerate(sheet.examples, start=1):
+        parts += [f"<h3>Example {number}</h3>", example_html(example, draw)]
+    parts += [
+        "<h3>The system change that goes beside the teaching</h3>",
+        _p(f"{sheet.topic.change} ({sheet.topic.change_strength})"),
+    ]
+    return "".join(parts)
+
+
+def example_html(example: Example, draw: Draw | None = None) -> str:
+    """One setup without who or when: drawn, then what each rule said."""
+    instead = ""
+    if example.instead:
+        sites = " or ".join(word("site", site) for site in example.instead)
+        note = f" ({example.table_note})" if example.table_note else ""
+        instead = _p(f"The department's table would have it {sites}{note}.")
+    drawn = draw(example) if draw is not None else ""
+    return _p(example.sentence) + drawn + _list(example.says) + instead
+
+
+def _choice(review: Topics) -> str:
+    return (
+        f'<div style="max-width:640px">{ranking_svg(review, LIGHT)}</div>'
+        + _p(review.runner_up)
+        + _p(_capped(review))
+        + weights_table(review)
+    )
+
+
+def _capped(review: Topics) -> str:
+    if not review.capped_patients:
+        return "No patient carried more than a twentieth of the weight."
+    who = counted(review.capped_patients, "patient counts", "patients count")
+    return f"{who} less, so that none carries more than a twentieth of the weight."
+
+
+def weights_table(review: Topics) -> str:
+    """Weight of each rule: severity times the share reviewers confirmed."""
+    rows = [
+        (
+            row["rule_id"],
+            row["topic"].replace("_", " "),
+            f"{row['severity']:.2g}",
+            f"{row['confirmed']} of {row['judged']}",
+            f"{row['confirmed_frac']:.2f}",
+            f"{row['weight']:.2f}",
+        )
+        for row in review.weights.to_dict("records")
+    ]
+    heads = ("Rule", "Topic", "Severity", "Confirmed", "Share used", "Weight")
+    return table(heads, rows, "  rrrr")
+
+
+def sessions_html(sessions: tuple[Session, ...], colours: Any = LIGHT) -> str:
+    """Each past session with its weeks and what they can and cannot show."""
+    if not sessions:
+        return _p("No session has been recorded.")
+    parts = []
+    for each in sessions:
+        parts += [
+            _p(each.sentence),
+            weeks_svg(each, colours),
+            session_table(each),
+            _list(each.cautions),
+        ]
+    return "".join(parts)
+
+
+def session_table(session: Session) -> str:
+    """Level and slope change with both kinds of standard error."""
+    if session.own.level_change is None or session.own.slope_change is None:
+        return ""
+    fits = [("taught", session.own)]
+    if session.other is not None and session.other.level_change is not None:
+        fits.append(("other units", session.other))
+    if session.difference is not None and session.difference.level_change is not None:
+        fits.append(("difference", session.difference))
+    rows = []
+    for name, fit in fits:
+        for what, change in (
+            ("level at once", fit.level_change),
+            ("slope, a week", fit.slope_change),
+        ):
+            if change is not None:
+                rows.append(
+                    (
+                        name,
+                        what,
+                        f"{100 * change.value:+.1f}",
+                        f"{100 * change.low_ols:+.1f} to {100 * change.high_ols:+.1f}",
+                        f"{100 * change.low_hac:+.1f} to {100 * change.high_hac:+.1f}",
+                    )
+                )
+    heads = ("Series", "Change", "Points", "Ordinary interval", "Autocorrelation-proof")
+    return table(heads, rows, "  rrr")
