@@ -48,7 +48,8 @@ def style(colours: Colours) -> str:
         "@media(max-width:1000px){.m-head{display:none}"
         ".m-row{grid-template-columns:1fr 92px 170px}"
         ".m-row .m-change,.m-row .m-spark,.m-row .m-n{grid-column:auto}}"
-        "@media print{.m-table details{break-inside:avoid}}"
+        "@media print{.m-table details{break-inside:avoid}"
+        ".m-table summary{list-style:none}}"
         "</style>"
     )
 
@@ -63,17 +64,22 @@ def lines_html(
     only: Sequence[str] | None = None,
 ) -> str:
     """The table of indicators; ``opened`` is the id of the line that stands open."""
+
+    def rows_of(lines: Sequence[Line]) -> str:
+        return "".join(
+            _details(each, month, colours, units, opened, marks, link) for each in lines
+        )
+
     shown = [each for each in month.lines if only is None or each.indicator.id in only]
     groups = (
         ("To be looked at", [each for each in shown if each.look]),
         ("In order, or without a start to hold it against", _quiet(shown)),
         ("Nothing known this month", [each for each in shown if not each.known]),
     )
+    if only is not None:
+        return f'<div class="m-table">{rows_of(shown)}</div>'
     rows = "".join(
-        f'<div class="m-group">{escape(title)} ({len(lines)})</div>'
-        + "".join(
-            _details(each, month, colours, units, opened, marks, link) for each in lines
-        )
+        f'<div class="m-group">{escape(title)} ({len(lines)})</div>' + rows_of(lines)
         for title, lines in groups
         if lines
     )
@@ -148,9 +154,8 @@ def _mark(each: Line, colours: Colours) -> str:
 def _goal(each: Line) -> str:
     wanted = {"up": "should rise", "down": "should fall", "none": "no side wanted"}
     words = wanted[each.indicator.wanted]
-    if each.indicator.start is None:
-        return words
-    return f"{words}; start {100 * float(each.indicator.start):.3g} %"
+    start = each.indicator.start_words
+    return f"{words}; look {start}" if start else words
 
 
 def _opened(

@@ -153,7 +153,7 @@ def _session_line(
     span: tuple[float, float],
     colours: Colours,
 ) -> list[str]:
-    before = int((session.weeks["week"] <= session.held_on).sum()) - 0.5
+    before = int((session.weeks["week"] <= session.held_on).sum()) - 1.0
     x = to_x(before)
     left_out = int(session.weeks["left_out"].sum())
     parts = [line(x, span[0], x, span[1], colours["ink"], 1, "2 3")]

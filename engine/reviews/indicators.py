@@ -69,6 +69,19 @@ class Indicator:
     def is_share(self) -> bool:
         return self.kind in {"treatments", "counted"}
 
+    @property
+    def looks_below(self) -> bool:
+        """Whether a figure below the start asks for a look; else one above does."""
+        return self.wanted == "up" or self.id == "I21"
+
+    @property
+    def start_words(self) -> str:
+        """``below 85 %``; empty without a start."""
+        if self.start is None:
+            return ""
+        side = "below" if self.looks_below else "above"
+        return f"{side} {100 * float(self.start):.3g} %"
+
 
 def _fires(rule: str) -> Counting:
     """Counts where the rule fires, among those it could tell about."""
@@ -268,7 +281,7 @@ INDICATORS: tuple[Indicator, ...] = (
         kind="amount",
         wanted="down",
         of="treatments with people, run time and filter recorded",
-        unit="person-minutes per 100 treatments",
+        unit="person-minutes in 100 treatments",
         basis="Trend only; no exposure limit exists for most drugs.",
     ),
     Indicator(
@@ -278,7 +291,7 @@ INDICATORS: tuple[Indicator, ...] = (
         kind="amount",
         wanted="down",
         of="treatments with an estimate and a dose",
-        unit="ug a treatment",
+        unit="µg a treatment",
         rules=("EX02",),
         basis="Model estimate; trend only.",
         estimate=True,

@@ -22,7 +22,7 @@ from engine.reviews.figures import (
     months_between,
     percent,
 )
-from engine.reviews.indicators import BY_ID, INDICATORS, OF_TREATMENTS, Indicator
+from engine.reviews.indicators import BY_ID, INDICATORS, OF_TREATMENTS
 from engine.reviews.month_journal import (
     Confirmations,
     baselines,
@@ -372,7 +372,7 @@ def _events(
             "count": seen.to_numpy(),
             "known": known.to_numpy(),
             "unknown": 0.0,
-            "patients": everyone["patients"].reindex(months).fillna(0).to_numpy(),
+            "patients": 0.0,
             "clusters": 0.0,
             "design_effect": 1.0,
         }
@@ -458,7 +458,7 @@ def _sentence(
 def _happened(lines: tuple[Line, ...]) -> str:
     told = [each.says for each in lines if each.look and each.value is not None]
     if not told:
-        return "No indicator stands past its start or outside its limits."
+        return "Nothing lies outside its limits or past the figure it is held against."
     return " ".join(told[:4])
 
 
@@ -491,7 +491,7 @@ def _to_decide(
     checked: Confirmations,
 ) -> tuple[str, ...]:
     asked = [
-        f"{each.indicator.title} stands {_past(each.indicator)}; is it the setup, the"
+        f"{each.indicator.title}: {each.figure}, {_past(each)}. Is it the setup, the"
         " supply or the record?"
         for each in lines
         if each.look
@@ -515,10 +515,10 @@ def _to_decide(
     return tuple(asked[:6])
 
 
-def _past(indicator: Indicator) -> str:
-    if indicator.start is None:
-        return "outside its limits"
-    return f"past its start of {percent(float(indicator.start))}"
+def _past(each: Line) -> str:
+    if bool(each.months["outside"].iloc[-1]):
+        return "outside the limits of earlier months"
+    return f"surely {each.indicator.start_words}"
 
 
 def _dose_sentence(dose: Mapping[str, float]) -> str:
@@ -540,10 +540,9 @@ def _exposure_sentence(dose: Mapping[str, float]) -> str:
         return "What reached room and sensors cannot be told this month."
 
     def told(name: str) -> str:
-        return (
-            f"{dose[f'{name}_mg']:,.1f} mg ({dose[f'{name}_low_mg']:,.1f} to"
-            f" {dose[f'{name}_high_mg']:,.1f})"
-        )
+        low, high = dose[f"{name}_low_mg"], dose[f"{name}_high_mg"]
+        middle = significant(dose[f"{name}_mg"])
+        return f"{middle} mg ({significant(low)} to {significant(high)})"
 
     return (
         f"By the estimate {told('room')} reached the room and {told('sensor')} the"

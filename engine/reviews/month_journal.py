@@ -63,7 +63,7 @@ def confirmations(
     table = table.assign(
         title=[_title(rule_id) for rule_id in table["rule_id"]],
         reviewed=said + table["needs_check"],
-        share_frac=share,
+        share_frac=share.where(enough),
         low=low,
         high=high,
         needs_work=enough & (share < float(CONFIRMED_START_FRAC)),
@@ -94,7 +94,7 @@ def judged_series(
             "x": (judged["verdict"] == "confirmed").astype(int),
             "k": 1,
             "u": 0,
-            "named": True,
+            "named": False,
         }
     )
 
@@ -110,7 +110,7 @@ def stronger_series(journal: Journal | None) -> pd.DataFrame:
             "x": (actions["strength"] != "weaker").astype(int),
             "k": 1,
             "u": 0,
-            "named": True,
+            "named": False,
         },
         columns=_PARTS,
     )

@@ -388,7 +388,7 @@ def _look(
     if value is None or indicator.start is None:
         return False
     start = float(indicator.start)
-    if indicator.wanted == "up" or indicator.id == "I21":
+    if indicator.looks_below:
         return bool(now["high"] < start)
     return bool(now["low"] > start)
 

@@ -1,7 +1,8 @@
 """Past sessions: what was taught, where, when, and what the weeks around it show.
 
 A session is a journal note on ``session:<topic>`` with the day it was held, the units
-taught and, where wanted, weeks to leave out while it spread.
+taught and how many weeks to leave out while it spread; the week of the session always
+is, for it lies on both sides.
 """
 
 from __future__ import annotations
@@ -65,7 +66,7 @@ def sessions_of(replay: Replay, journal: Journal | None) -> tuple[Session, ...]:
         if topic is None or held_on is None:
             continue
         units = tuple(str(unit) for unit in entry.new.get("units") or ())
-        left_out = int(entry.new.get("weeks_left_out") or 0)
+        left_out = int(entry.new.get("weeks_left_out") or 1)
         found.append(session_effect(replay, topic, held_on, units, left_out, entry.seq))
     return tuple(sorted(found, key=lambda each: each.held_on, reverse=True))
 
@@ -75,7 +76,7 @@ def session_effect(
     topic: Topic,
     held_on: pd.Timestamp,
     units: tuple[str, ...] = (),
-    weeks_left_out: int = 0,
+    weeks_left_out: int = 1,
     seq: int = 0,
 ) -> Session:
     """The weekly flagged share before and after a session; no units means all."""
@@ -158,11 +159,13 @@ def _sentence(
     if own.refusal or own.level_change is None:
         return f"{opening} too short to say ({own.refusal} weeks)."
     change = own.level_change
-    way = "fell" if change.value < 0 else "rose"
-    text = (
-        f"{opening} the flagged share {way} by {points(change.value)} at once"
-        f" ({points(change.low_hac, change.high_hac)})"
-    )
+    span = points(change.low_hac, change.high_hac)
+    if abs(change.value) < 0.005:
+        text = f"{opening} the flagged share did not move at once ({span})"
+    else:
+        way = "fell" if change.value < 0 else "rose"
+        size = points(change.value)
+        text = f"{opening} the flagged share {way} by {size} at once ({span})"
     if not own.tested:
         return f"{text}; too few weeks for a verdict."
     told = "beyond both intervals" if change.shown else "which could be chance"

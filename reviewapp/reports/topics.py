@@ -138,10 +138,14 @@ def session_table(session: Session) -> str:
                     (
                         name,
                         what,
-                        f"{100 * change.value:+.1f}",
-                        f"{100 * change.low_ols:+.1f} to {100 * change.high_ols:+.1f}",
-                        f"{100 * change.low_hac:+.1f} to {100 * change.high_hac:+.1f}",
+                        _points(change.value),
+                        f"{_points(change.low_ols)} to {_points(change.high_ols)}",
+                        f"{_points(change.low_hac)} to {_points(change.high_hac)}",
                     )
                 )
     heads = ("Series", "Change", "Points", "Ordinary interval", "Autocorrelation-proof")
     return table(heads, rows, "  rrr")
+
+
+def _points(share: float) -> str:
+    return f"{100 * share:+.1f}".replace("-", "−")
