@@ -21,6 +21,7 @@ from engine.reviews.figures import (
     month_words,
     months_between,
     percent,
+    significant,
 )
 from engine.reviews.indicators import BY_ID, INDICATORS, OF_TREATMENTS
 from engine.reviews.month_journal import (
