@@ -205,6 +205,46 @@ PUI_1987 = Source(
     title="Experimental study of particle deposition in bends of circular tubes",
     journal="Aerosol Science and Technology 7:301",
 )
+THOMAS_1958 = Source(
+    key="THOMAS_1958",
+    authors="Thomas JW",
+    year=1958,
+    title="Gravity settling of particles in a horizontal tube",
+    journal="Journal of the Air Pollution Control Association 8:32",
+    known="from memory",
+)
+PICH_1972 = Source(
+    key="PICH_1972",
+    authors="Pich J",
+    year=1972,
+    title="Theory of gravitational deposition of particles from laminar flows",
+    journal="Journal of Aerosol Science 3:351",
+    known="from memory",
+)
+HEYDER_1977 = Source(
+    key="HEYDER_1977",
+    authors="Heyder J, Gebhart J",
+    year=1977,
+    title="Gravitational deposition from laminar flow through inclined tubes",
+    journal="Journal of Aerosol Science 8:289",
+    known="from memory",
+)
+SCHWENDIMAN_1975 = Source(
+    key="SCHWENDIMAN_1975",
+    authors="Schwendiman LC, Stegen GE, Glissmeyer JA",
+    year=1975,
+    title="Methods and aids for assessing particle losses in sampling lines",
+    journal="Battelle report BNWL-SA-5138",
+    known="from memory",
+)
+CRANE_1977 = Source(
+    key="CRANE_1977",
+    authors="Crane RI, Evans RL",
+    year=1977,
+    title="Inertial deposition of particles in a bent pipe",
+    journal="Journal of Aerosol Science 8:161",
+    known="from memory",
+)
 LIU_AGARWAL_1974 = Source(
     key="LIU_AGARWAL_1974",
     authors="Liu BYH, Agarwal JK",

@@ -11,10 +11,9 @@ from numpy.typing import ArrayLike
 
 from engine.evidence import room
 from engine.physics.air import coefficients
-from engine.units import MIN_PER_H, ML_PER_L, S_PER_H
+from engine.units import MIN_PER_H, ML_PER_L, S_PER_H, UG_PER_MG
 
 L_PER_M3 = ML_PER_L
-UG_PER_MG = ML_PER_L
 NEAR_FIELD_CAUTION = (
     "The room is taken as mixed. Beside a ventilator without a filter about "
     f"{float(room.NEAR_FIELD_MG_PER_M3) * UG_PER_MG:.0f} µg/m³ was measured, several "
