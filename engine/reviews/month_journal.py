@@ -17,11 +17,11 @@ from engine.journal import Entry, Journal
 from engine.replay import Replay
 from engine.reviews import month_rows as rows
 from engine.reviews.figures import percent, percent_range
+from engine.reviews.incident_words import STRENGTHS
 from engine.reviews.wording import counted
 from engine.rules import RETIRED, rule_of
 from engine.stats.rates import clopper_pearson
 
-STRENGTHS = ("stronger", "intermediate", "weaker")
 _JUDGED = ("confirmed", "dismissed")
 _PARTS = ["local_month", "patient", "x", "k", "u", "named"]
 
@@ -117,14 +117,14 @@ def stronger_series(journal: Journal | None) -> pd.DataFrame:
 
 
 def decisions(journal: Journal | None, month: str | None = None) -> pd.DataFrame:
-    """Decisions and actions that stand: seq, month, indicator, what, strength,
+    """Decisions and actions that stand: seq, month, indicator, text, strength,
     owner_role, measure, due, at, actor."""
     found = []
     for entry in _standing(journal, "decision"):
         place = re.fullmatch(r"month:(\d{4}-\d{2})(?::(\w+))?", entry.object)
         if place is None or (month is not None and place[1] != month):
             continue
-        held = entry.new if isinstance(entry.new, dict) else {"what": entry.new}
+        held = entry.new if isinstance(entry.new, dict) else {"text": entry.new}
         found.append(
             (
                 entry.seq,
@@ -139,7 +139,7 @@ def decisions(journal: Journal | None, month: str | None = None) -> pd.DataFrame
     return pd.DataFrame(found, columns=columns)
 
 
-_DECISION_KEYS = ("what", "strength", "owner_role", "measure", "due")
+_DECISION_KEYS = ("text", "strength", "owner_role", "measure", "due")
 
 
 def sign_offs(journal: Journal | None, month: str) -> pd.DataFrame:

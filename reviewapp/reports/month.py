@@ -184,7 +184,7 @@ def _decisions(month: Month) -> str:
     return table(heads, rows)
 
 
-_DECIDED = ("indicator", "what", "strength", "owner_role", "measure", "due")
+_DECIDED = ("indicator", "text", "strength", "owner_role", "measure", "due")
 
 
 def _signature(month: Month) -> str:

@@ -1,0 +1,300 @@
+"""Month: what happened, what changed, what is sure, what to decide; one line each."""
+
+from __future__ import annotations
+
+from html import escape
+from typing import Any
+
+import streamlit as st
+
+from engine.errors import EngineError
+from engine.reviews.figures import month_words
+from engine.reviews.incident_words import STRENGTHS
+from engine.reviews.indicators import INDICATORS
+from engine.reviews.month import Month
+from engine.reviews.month_journal import differences
+from reviewapp import data, parts, theme
+from reviewapp.month_html import address, lines_html, style
+from reviewapp.report import page
+from reviewapp.reports.month import (
+    filters_table,
+    forgone_table,
+    month_marks,
+    month_sections,
+    sensors_table,
+)
+
+WHOLE = "whole department"
+
+
+def show() -> None:
+    """The whole screen."""
+    month = _chosen()
+    if month is None:
+        return
+    parts.opening(month.sentence)
+    parts.caution()
+    _answers(month)
+    _lines(month)
+    _look(month)
+    _dose(month)
+    _confirmations(month)
+    _decisions(month)
+    _sign_off(month)
+    _report(month)
+
+
+def _chosen() -> Month | None:
+    """The month and unit asked for, from the address or the two boxes."""
+    listed = data.months()
+    if not listed:
+        parts.empty(
+            "This log holds no treatments that were given.",
+            "Take in treatments, then open it again.",
+        )
+        return None
+    left, right, _ = st.columns([2, 2, 3])
+    month = left.selectbox(
+        "Month",
+        listed,
+        index=_place(listed, "month", listed.index(data.last_whole_month())),
+        format_func=month_words,
+        key="month_chosen",
+        on_change=_remember,
+        args=("month", "month_chosen"),
+    )
+    units = [WHOLE, *data.units()]
+    unit = right.selectbox(
+        "Unit",
+        units,
+        index=_place(units, "unit", 0),
+        key="month_unit",
+        on_change=_remember,
+        args=("unit", "month_unit"),
+    )
+    try:
+        return data.month(month, None if unit == WHOLE else unit)
+    except EngineError as problem:
+        parts.empty(str(problem), "Choose another month or the whole department.")
+        return None
+
+
+def _place(choices: list[str], key: str, otherwise: int) -> int:
+    asked = st.query_params.get(key)
+    if asked is None:
+        return otherwise
+    if asked not in choices:
+        parts.empty(f"Nothing here is called {asked}.", "Choose below.")
+        return otherwise
+    return choices.index(asked)
+
+
+def _remember(key: str, widget: str) -> None:
+    st.query_params[key] = st.session_state[widget]
+
+
+def _answers(month: Month) -> None:
+    """The three answers a committee asks for first, then what to decide."""
+    told = (
+        ("What happened", month.happened),
+        ("What changed", month.changed),
+        ("What is least sure", month.sure),
+    )
+    for title, words in told:
+        st.markdown(f"**{title}.** {parts.plain(words)}")
+    if month.to_decide:
+        asked = "\n".join(f"- {parts.plain(line)}" for line in month.to_decide)
+        st.markdown(f"**What to decide.**\n{asked}")
+
+
+def _lines(month: Month) -> None:
+    st.subheader("The indicators")
+    colours = theme.colours()
+    units = data.month_units(month.month) if month.unit is None else {}
+    html = lines_html(
+        month,
+        colours,
+        units,
+        opened=st.query_params.get("line"),
+        marks=month_marks(data.sessions()),
+        link=lambda **wanted: address("treatments", **wanted),
+    )
+    st.markdown(style(colours) + html, unsafe_allow_html=True)
+    st.caption(
+        "Bars are to scale: what is known lies left, the hatched end is what nobody"
+        " recorded, the notch is the figure to hold it against. A filled square asks to"
+        " be looked at."
+    )
+
+
+def _look(month: Month) -> None:
+    st.subheader("Filters and sensors needing a look")
+    n_filters, n_sensors = len(month.filters), len(month.sensors)
+    if not n_filters and not n_sensors:
+        st.markdown("No filter and no ventilator asks for a look this month.")
+        return
+    with st.expander(f"Filters over or near the limit, rising or doubted: {n_filters}"):
+        st.markdown(filters_table(month.filters), unsafe_allow_html=True)
+        st.markdown(f"[All filters]({address('filters')})")
+    with st.expander(f"Ventilators with a sensor to look at: {n_sensors}"):
+        st.markdown(sensors_table(month.sensors), unsafe_allow_html=True)
+
+
+def _dose(month: Month) -> None:
+    st.subheader("Dose forgone, aerosol to room and sensors")
+    st.markdown(parts.plain(month.dose_sentence))
+    if not month.forgone.empty:
+        with st.expander("Which setups: groups large enough to show"):
+            st.markdown(forgone_table(month), unsafe_allow_html=True)
+    st.markdown(parts.plain(month.exposure_sentence))
+
+
+def _confirmations(month: Month) -> None:
+    st.subheader("Flags and what reviewers said of them")
+    st.markdown(parts.plain(month.confirmations.sentence))
+    rules = month.confirmations.rules
+    if rules.empty:
+        return
+    with st.expander("By rule"):
+        shown = rules[
+            ["rule_id", "title", "flags", "reviewed", "confirmed", "dismissed"]
+        ].assign(
+            needs_work=rules["needs_work"].map({True: "needs work", False: ""}),
+            see=[
+                address("treatments", month=month.month, rule=rule, answer="fires")
+                for rule in rules["rule_id"]
+            ],
+        )
+        heads = {
+            "rule_id": "Rule",
+            "title": "What it asks",
+            "flags": "Flags",
+            "reviewed": "Reviewed",
+            "confirmed": "Confirmed",
+            "dismissed": "Dismissed",
+            "needs_work": "Rule",
+            "see": "Treatments",
+        }
+        st.dataframe(
+            shown.rename(columns={**heads, "needs_work": "State of the rule"}),
+            hide_index=True,
+            width="stretch",
+            column_config={
+                "Treatments": st.column_config.LinkColumn(display_text="open")
+            },
+        )
+
+
+def _decisions(month: Month) -> None:
+    st.subheader("Decisions and actions")
+    if month.decisions.empty:
+        st.markdown("None recorded for this month.")
+    else:
+        st.dataframe(
+            parts.labelled(month.decisions.drop(columns=["month", "seq"])),
+            hide_index=True,
+            width="stretch",
+        )
+    with st.expander("Record a decision"), st.form("decision", clear_on_submit=True):
+        about = st.selectbox(
+            "About",
+            ["the whole month", *(f"{each.id} {each.title}" for each in INDICATORS)],
+        )
+        text = st.text_input("What is decided")
+        strength = st.selectbox("Strength", STRENGTHS)
+        owner = st.text_input("Owner (role, not a name)")
+        measure = st.text_input("Measured by")
+        due = st.date_input("Due", value=None)
+        who, role = parts.signature("decision")
+        if st.form_submit_button("Keep the decision"):
+            place = "" if about == "the whole month" else f":{about.split()[0]}"
+            new = {
+                "text": text,
+                "strength": strength,
+                "owner_role": owner,
+                "measure": measure,
+                "due": str(due or ""),
+            }
+            if text.strip():
+                _keep("decision", f"month:{month.month}{place}", new, who, role)
+            else:
+                st.warning("Say what is decided, then keep it.")
+    _freeze_baseline(month)
+
+
+def _freeze_baseline(month: Month) -> None:
+    """A dated decision on which months the limits of an indicator stand on."""
+    with (
+        st.expander("Freeze the months an indicator's limits stand on"),
+        st.form("baseline", clear_on_submit=True),
+    ):
+        shares = [each for each in INDICATORS if each.is_share]
+        about = st.selectbox(
+            "Indicator", [f"{each.id} {each.title}" for each in shares]
+        )
+        ends = (month.months[0], month.months[-1])
+        if len(month.months) > 1:
+            ends = st.select_slider(
+                "Months", month.months, value=ends, format_func=month_words
+            )
+        who, role = parts.signature("baseline")
+        if st.form_submit_button("Freeze"):
+            new = {"since": ends[0], "until": ends[1]}
+            _keep("decision", f"baseline:{about.split()[0]}", new, who, role)
+
+
+def _sign_off(month: Month) -> None:
+    st.subheader("Signature")
+    for row in month.sign_offs.to_dict("records"):
+        changed = differences(row["snapshot"], month.snapshot)
+        same = "Nothing has changed since." if not changed else " ".join(changed)
+        when = f"{row['at']:%d %B %Y %H:%M} UTC"
+        st.markdown(parts.plain(f"{row['actor']} ({row['role']}), {when}. {same}"))
+    if month.sign_offs.empty:
+        st.markdown("Not signed. Figures may change until it is.")
+    if month.unit is not None:
+        st.caption("A month is signed for the whole department.")
+        return
+    with st.form("sign", clear_on_submit=True):
+        st.caption(
+            "A signature freezes the figures with the hashes of log, policy and"
+            " journal."
+        )
+        who, role = parts.signature("sign")
+        agreed = st.checkbox("I have read the month and its cautions.")
+        if st.form_submit_button("Sign"):
+            if agreed:
+                new = month.snapshot
+                _keep("sign_off", f"month:{month.month}", new, who, role)
+            else:
+                st.warning("Tick that you have read it, then sign.")
+
+
+def _report(month: Month) -> None:
+    st.download_button(
+        "Printable report",
+        data=lambda: page(
+            f"Month report, {month_words(month.month)}",
+            data.banner(),
+            month_sections(
+                month, data.month_units(month.month), month_marks(data.sessions())
+            ),
+        ),
+        file_name=f"month-{month.month}.html",
+        mime="text/html",
+        on_click="ignore",
+    )
+
+
+def _keep(action: str, object: str, new: Any, who: str, role: str) -> None:
+    try:
+        data.keep(
+            action=action, object=object, new=new, actor=who, role=role, reason=""
+        )
+    except EngineError as problem:
+        st.warning(escape(str(problem)))
+        return
+    st.rerun()
+
+
+show()
