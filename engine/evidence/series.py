@@ -3,6 +3,7 @@
 from engine.evidence.shape import Number
 from engine.evidence.sources import (
     ANHOEJ_2014,
+    NCHS_2023,
     NELSON_1994,
     NIST_HANDBOOK,
     SPIEGELHALTER_2005,
@@ -50,4 +51,12 @@ WINSORISED_FRAC = Number(
     source=SPIEGELHALTER_2005,
     where="share of units pulled in at either end before dispersion is judged",
     known="from memory",
+)
+WIDEST_INTERVAL_RATIO = Number(
+    value=1.60,
+    unit="ratio",
+    source=NCHS_2023,
+    where="abstract: widest interval of a rate that may be shown, beside the rate",
+    known="read",
+    note="for plain counts the rule of ten decides before this one does",
 )

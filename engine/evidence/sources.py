@@ -636,3 +636,11 @@ SPIEGELHALTER_2005 = Source(
     journal="Statistics in Medicine 24:1185",
     known="from memory",
 )
+NCHS_2023 = Source(
+    key="NCHS_2023",
+    authors="US National Center for Health Statistics",
+    year=2023,
+    title="Data presentation standards for rates and counts, evaluation report",
+    address="https://stacks.cdc.gov/view/cdc/123462",
+    known="read",
+)

@@ -14,6 +14,7 @@ from numpy.typing import ArrayLike
 from scipy import special
 
 from engine.evidence.filter import INTERVAL_COVER_FRAC
+from engine.evidence.series import WIDEST_INTERVAL_RATIO
 
 Interval = tuple[np.ndarray, np.ndarray]
 
@@ -193,18 +194,14 @@ def corrected_share(flagged: int, n: int, sensitivity: float, specificity: float
 
 def may_be_shown(count: int, exposure_count: int, fewest: int) -> bool:
     """Whether a rate is steady enough to print: enough counted on both sides, and an
-    interval no wider than 1.6 times the rate.
+    interval not too wide beside the rate.
 
     Source   presentation standards for rates, NCHS (the rule read)
     """
     if count < fewest or exposure_count < fewest:
         return False
     low, high = poisson_exact(count)
-    return float((high - low) / count) <= WIDEST_RELATIVE
-
-
-# A published rule's own figure; it decides nothing by itself (the count rule does).
-WIDEST_RELATIVE = 1.60
+    return float((high - low) / count) <= float(WIDEST_INTERVAL_RATIO)
 
 
 def _effective(

@@ -45,6 +45,7 @@ class Segmented:
     after_count: int
     level: float
     slope: Change | None
+    slope_alone_se: float  # of the line fitted to the earlier points alone
     level_change: Change | None
     slope_change: Change | None
     r2: float
@@ -92,11 +93,14 @@ def segmented(
         use_t=True,
     )
     expected = design[:, :2] @ plain.params[:2]
+    earlier = good & (t < 0)
+    alone = sm.WLS(y[earlier], design[earlier, :2], weights=w[earlier]).fit()
     return Segmented(
         before_count=before,
         after_count=after,
         level=float(plain.params[0]),
         slope=_change(plain, hac, 1),
+        slope_alone_se=float(alone.bse[1]),
         level_change=_change(plain, hac, 2),
         slope_change=_change(plain, hac, 3),
         r2=float(plain.rsquared),
@@ -153,6 +157,7 @@ def _refused(before: int, after: int, needed: int, n: int) -> Segmented:
         after_count=after,
         level=math.nan,
         slope=None,
+        slope_alone_se=math.nan,
         level_change=None,
         slope_change=None,
         r2=math.nan,
