@@ -60,6 +60,20 @@ AGE_NODES_COUNT = Number(
     where="limb volumes the age of what is swept past is averaged over",
     known="ours",
 )
+SHORT_OUTPUT_FRAC = Number(
+    value=0.1,
+    unit="frac",
+    source=OURS,
+    where="output shorter than this share of a cycle smooths nothing: summed finer",
+    known="ours",
+)
+PUFF_NODES_COUNT = Number(
+    value=12.0,
+    unit="count",
+    source=OURS,
+    where="limb volumes the age of a puff is averaged over where the spread is wide",
+    known="ours",
+)
 HARMONICS_COUNT = Number(
     value=12.0,
     unit="count",

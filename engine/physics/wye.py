@@ -38,6 +38,7 @@ _Work: TypeAlias = "Callable[[Parts, Cycle, Emission], Arrivals]"
 
 _TINY = 1e-12
 _SMALL_ANGLE = 1e-6
+_LEAST_FALL = 1.001  # peak over mean flow
 _LEAST_VARIANCE = 0.01  # of the mean squared: an age known better than that is even
 
 
@@ -189,12 +190,17 @@ def dispersed(parts: Parts, cycle: Cycle, emission: Emission) -> Arrivals:
     Checked  engine/evidence/published/wye_values.csv
     """
     spread = np.asarray(_spread_ml(parts) / cycle.cycle_ml)
-    falls = np.asarray(cycle.peak_ratio) > 1
+    falls = np.broadcast_to(np.asarray(cycle.peak_ratio) > _LEAST_FALL, spread.shape)
+    lasted_s = np.asarray(emission.stop_s) - np.asarray(emission.start_s)
+    puff = lasted_s < float(wye.SHORT_OUTPUT_FRAC) * np.asarray(cycle.cycle_s)
     found = np.zeros((3, len(spread)))
-    for low, high, work in _BY_SPREAD:
+    for low, high, is_puff, work in _BY_SPREAD:
         for falling in (False, True):
             index = np.flatnonzero(
-                (spread >= low) & (spread < high) & (falls == falling)
+                (spread >= low)
+                & (spread < high)
+                & (puff == is_puff)
+                & (falls == falling)
             )
             if len(index) == 0:
                 continue
@@ -236,16 +242,20 @@ def _wide(harmonics: int, nodes: int) -> _Work:
 _NARROW = float(wye.NARROW_SPREAD_FRAC)
 _WIDE = float(wye.WIDE_SPREAD_FRAC)
 _WIDEST = float(wye.WIDEST_SPREAD_FRAC)
-# spread of the volume over the breath's, from and below: how the split is summed
-_BY_SPREAD: tuple[tuple[float, float, _Work], ...] = (
-    (0.0, _NARROW, _narrow(int(wye.NARROW_NODES_COUNT))),
-    (_NARROW, _WIDE, _narrow(int(wye.VOLUME_NODES_COUNT))),
+# spread of the volume over the breath's, from and below; whether the output is short;
+# how the split is summed
+_BY_SPREAD: tuple[tuple[float, float, bool, _Work], ...] = (
+    (0.0, _NARROW, False, _narrow(int(wye.NARROW_NODES_COUNT))),
+    (_NARROW, _WIDE, False, _narrow(int(wye.VOLUME_NODES_COUNT))),
     (
         _WIDE,
         _WIDEST,
+        False,
         _wide(int(wye.WIDE_HARMONICS_COUNT), int(wye.WIDE_NODES_COUNT)),
     ),
-    (_WIDEST, np.inf, _wide(int(wye.WIDEST_HARMONICS_COUNT), 0)),
+    (_WIDEST, np.inf, False, _wide(int(wye.WIDEST_HARMONICS_COUNT), 0)),
+    (0.0, _WIDE, True, _narrow(int(wye.VOLUME_NODES_COUNT))),
+    (_WIDE, np.inf, True, _wide(int(wye.HARMONICS_COUNT), int(wye.PUFF_NODES_COUNT))),
 )
 
 
@@ -320,20 +330,37 @@ class _Sines:
 # --- the breath in volume and in time --------------------------------------------
 
 
+def _is_steady(cycle: Cycle) -> bool:
+    return isinstance(cycle.peak_ratio, float) and cycle.peak_ratio == 1
+
+
+def _falling_ratio(cycle: Cycle) -> Values:
+    """Peak over mean flow; a flow that hardly falls is taken to fall a little."""
+    return np.maximum(cycle.peak_ratio, _LEAST_FALL)
+
+
 def _inspiratory_time_s(cycle: Cycle, position_ml: Values) -> Values:
-    """When a position of the inspired gas passes the Y."""
-    ratio = cycle.peak_ratio
-    if np.ndim(ratio) == 0 and ratio == 1:
-        return position_ml * (cycle.inspiratory_s / cycle.inspired_ml)
-    u = np.minimum(position_ml / cycle.inspired_ml, 1.0)
-    root = np.sqrt(np.maximum(ratio * ratio - 4 * (ratio - 1) * u, 0.0))
-    return cycle.inspiratory_s * 2 * u / (ratio + root)
+    """When a position of the inspired gas passes the Y.
+
+    A flow that falls evenly makes the position a parabola of time; this is its root.
+    """
+    ti_s = cycle.inspiratory_s
+    if _is_steady(cycle):
+        return position_ml * (ti_s / cycle.inspired_ml)
+    steep = _falling_ratio(cycle) - 1
+    vertex_s = ti_s * (steep + 1) / (2 * steep)
+    per_ml = ti_s * ti_s / (steep * cycle.inspired_ml)
+    left = np.maximum(vertex_s**2 - per_ml * position_ml, (vertex_s - ti_s) ** 2)
+    return vertex_s - np.sqrt(left)
 
 
 def _inspired_by_ml(cycle: Cycle, time_s: Values) -> np.ndarray:
     """The other way round: gas inspired by this time."""
     s = np.clip(np.asarray(time_s) / cycle.inspiratory_s, 0.0, 1.0)
-    return cycle.inspired_ml * s * (cycle.peak_ratio - (cycle.peak_ratio - 1) * s)
+    if _is_steady(cycle):
+        return cycle.inspired_ml * s
+    ratio = _falling_ratio(cycle)
+    return cycle.inspired_ml * s * (ratio - (ratio - 1) * s)
 
 
 def _expiratory_time_s(cycle: Cycle, position_ml: Values) -> Values:
@@ -561,8 +588,7 @@ def _stretches(
 
     Returns  share, middle in mL and half length in mL of each stretch.
     """
-    steady = np.ndim(cycle.peak_ratio) == 0 and cycle.peak_ratio == 1
-    pieces = 1 if steady else int(wye.FALLING_FLOW_PIECES_COUNT)
+    pieces = 1 if _is_steady(cycle) else int(wye.FALLING_FLOW_PIECES_COUNT)
     turn_s = cycle.inspiratory_s
     duration_s = np.maximum(emission.stop_s - emission.start_s, _TINY)
     first_s = np.minimum(emission.start_s, turn_s)
