@@ -218,6 +218,12 @@ def _how(each: Line) -> tuple[str, ...]:
             f"Run rules need ten months off the centre line; there are"
             f" {run.useful_count}."
         )
+    if each.cusum is not None:
+        made.append(
+            f"Cumulative sum {each.cusum.sums[-1]:.1f} of {each.cusum.limit:.1f}, tuned"
+            f" to {100 * each.cusum.p0:.0f} % becoming {100 * each.cusum.p1:.0f} %; one"
+            f" signal without cause in {each.cusum.false_alarm_points:.0f} months."
+        )
     if math.isfinite(each.design_effect) and each.design_effect > 1.05:
         made.append(f"Design effect {each.design_effect:.1f}.")
     return tuple(made)

@@ -70,6 +70,11 @@ class Indicator:
         return self.kind in {"treatments", "counted"}
 
     @property
+    def wanted_side(self) -> int:
+        """1 where a rise is wanted, -1 where a fall is, 0 where neither."""
+        return {"up": 1, "down": -1, "none": 0}[self.wanted]
+
+    @property
     def looks_below(self) -> bool:
         """Whether a figure below the start asks for a look; else one above does."""
         return self.wanted == "up" or self.id == "I21"

@@ -134,7 +134,7 @@ WITH pair AS (
 SELECT {_MONTH_OF.format(at="read_at")} AS local_month, filter_id AS patient,
        count(*) FILTER (before - r >= {float(FELL_CMH2O_PER_LPS)}
                         AND before - r >= {float(FELL_FRAC)} * before) AS x,
-       count(*) AS k, 0 AS u, true AS named
+       count(*) AS k, 0 AS u, false AS named
 FROM pair WHERE before IS NOT NULL GROUP BY ALL
 """
 
@@ -149,7 +149,7 @@ WITH most AS (
 SELECT local_month, ventilator_token AS patient,
        (highest >= $limit)::INTEGER AS x,
        (highest IS NOT NULL)::INTEGER AS k, (highest IS NULL)::INTEGER AS u,
-       true AS named
+       false AS named
 FROM most
 """
 

@@ -118,7 +118,7 @@ def to_decide(
 def _past(each: Line) -> str:
     if bool(each.months["outside"].iloc[-1]):
         return "outside the limits of earlier months"
-    return f"surely {each.indicator.start_words}"
+    return f"{each.indicator.start_words} with its whole interval"
 
 
 def dose_sentence(dose: Mapping[str, float]) -> str:

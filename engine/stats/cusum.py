@@ -178,7 +178,7 @@ def share_cusum(
     )
 
 
-RUNS = 600  # simulated series behind each limit
+RUNS = 400  # simulated series behind each limit
 
 
 def _share_limit(
@@ -193,16 +193,20 @@ def _share_limit(
         return math.inf
     draw = np.random.default_rng(seed)
     steps = int(6 * wanted)
-    sums, highest = np.zeros(RUNS), np.zeros((steps, RUNS))
+    size = np.floor(draw.choice(n, (steps, RUNS))).astype(int)
+    x = draw.binomial(size, p0)
+    rises = x * weights[0] + (size - x) * weights[1]
+    highest = np.empty((steps, RUNS))
+    sums = np.zeros(RUNS)
     for t in range(steps):
-        size = np.floor(draw.choice(n, RUNS)).astype(int)
-        x = draw.binomial(size, p0)
-        sums = np.maximum(0.0, sums + x * weights[0] + (size - x) * weights[1])
+        sums = np.maximum(0.0, sums + rises[t])
         highest[t] = sums
     np.maximum.accumulate(highest, axis=0, out=highest)
-    low, high = 0.0, float(highest.max()) + 1.0
-    for _ in range(40):
+    low, high = 0.0, float(highest[-1].max()) + 1.0
+    for _ in range(24):
         middle = (low + high) / 2
-        length = float(np.mean(np.sum(highest <= middle, axis=0) + 1))
+        length = float(np.mean(np.argmax(highest > middle, axis=0) + 1))
+        never = highest[-1] <= middle
+        length += float(np.mean(never)) * (steps - 1)
         low, high = (middle, high) if length < wanted else (low, middle)
     return high
