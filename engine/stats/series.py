@@ -17,6 +17,10 @@ from engine.evidence.filter import INTERVAL_COVER_FRAC
 from engine.evidence.review import POINTS_TO_DRAW_COUNT, POINTS_TO_TEST_COUNT
 
 
+# A difference of two equal series is nothing, not the last bits of its arithmetic.
+_PLACES = 12
+
+
 @dataclass(frozen=True, kw_only=True)
 class Change:
     """One coefficient with its two standard errors and intervals."""
@@ -75,7 +79,7 @@ def segmented(
     """
     import statsmodels.api as sm
 
-    y = np.asarray(values, float)
+    y = np.round(np.asarray(values, float), _PLACES)
     t = np.arange(len(y)) - float(first_after)
     good = np.isfinite(y)
     before, after = int((good & (t < 0)).sum()), int((good & (t >= 0)).sum())
@@ -103,7 +107,7 @@ def segmented(
         slope_alone_se=float(alone.bse[1]),
         level_change=_change(plain, hac, 2),
         slope_change=_change(plain, hac, 3),
-        r2=float(plain.rsquared),
+        r2=float(plain.rsquared) if np.ptp(y[good]) > 0 else math.nan,
         fitted=design @ plain.params,
         expected=expected,
         mean_gap=float(np.mean((design @ plain.params - expected)[t >= 0])),
