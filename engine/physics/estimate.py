@@ -150,14 +150,19 @@ def way_survival_frac(setup: Setup, constants: Constants) -> np.ndarray:
 
 
 def takes_humid_factor(setup: Setup) -> np.ndarray:
-    """Where the bench factor for humid circuits applies.
+    """Where the bench factor for humid circuits applies."""
+    return setup.is_humid & minds_humid_gas(setup)
 
-    Not to breath-enhanced jets, which lose nothing to humid gas on the bench, and not
-    at the airway of a single-limb circuit, past all humid tubing.
+
+def minds_humid_gas(setup: Setup) -> np.ndarray:
+    """Where humid gas costs dose on the way to the Y.
+
+    Not breath-enhanced jets, which lose nothing to humid gas on the bench, not at the
+    airway of a single-limb circuit, past all humid tubing, and not past the Y.
     """
     enhanced = setup.generator == code_of("generator", "breath_enhanced_jet")
     at_airway = setup.is_single_limb & (setup.site == _AIRWAY_SIDE)
-    return setup.is_humid & ~enhanced & ~at_airway
+    return ~enhanced & ~at_airway & (setup.site != _EXPIRATORY)
 
 
 def hme_on_the_way_in_frac(setup: Setup) -> np.ndarray:

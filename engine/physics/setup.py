@@ -12,7 +12,7 @@ from typing import Any
 
 import numpy as np
 
-from engine.batch import Batch, size
+from engine.batch import COLUMNS, Batch, size
 from engine.columns import code_of, words_of
 from engine.evidence import circuit, device, tube
 from engine.evidence.shape import Number
@@ -150,6 +150,8 @@ def stacked(setups: list[Setup]) -> Setup:
     )
 
 
+# Impossible values are worked through like any other: their row is refused after all.
+@np.errstate(over="ignore", divide="ignore", invalid="ignore")
 def setup_of(rows: Batch) -> Setup:
     """What the physics needs of each treatment, with assumptions and refusals."""
     gaps = _Gaps(size(rows))
@@ -405,35 +407,44 @@ def _patient_adds(rows: Batch) -> np.ndarray:
     )
 
 
-_POSITIVE = (
+_READ = (
     "tidal_volume_ml",
     "respiratory_rate_bpm",
     "inspiratory_time_s",
+    "inspiratory_pause_s",
+    "peak_inspiratory_flow_lpm",
+    "bias_flow_lpm",
+    "generator_gas_lpm",
+    "distance_from_wye_cm",
     "tube_id_mm",
     "mmad_um",
+    "gsd",
 )
-_NOT_NEGATIVE = ("bias_flow_lpm", "generator_gas_lpm", "distance_from_wye_cm")
+
+
+def _is_impossible(rows: Batch) -> np.ndarray:
+    """True where a number the physics reads lies outside what its column can hold."""
+    outside = np.zeros(size(rows), bool)
+    for name in _READ:
+        low, high = COLUMNS[name].low, COLUMNS[name].high
+        assert low is not None
+        assert high is not None
+        outside |= (rows[name] < low) | (rows[name] > high)
+    return outside
 
 
 def _refusal(rows: Batch, setup: Setup) -> np.ndarray:
     """The first reason that holds, in the order the reasons are listed."""
-    impossible = np.zeros(len(setup), bool)
-    for name in _POSITIVE:
-        impossible |= (rows[name] <= 0) | np.isinf(rows[name])
-    for name in _NOT_NEGATIVE:
-        impossible |= (rows[name] < 0) | np.isinf(rows[name])
-    impossible |= setup.gsd < 1
-    limb_sites = ("humidifier_inlet", "humidifier_outlet", "expiratory_limb")
     reasons = (
         setup.generator < 0,
         setup.site < 0,
         rows["circuit"] < 0,
         np.isnan(setup.tidal_ml),
-        impossible,
+        _is_impossible(rows),
         setup.expiratory_s <= 0,
         setup.tidal_ml < float(circuit.SMALLEST_BREATH_ML),
         setup.tidal_ml <= setup.dead_ml,
-        setup.is_single_limb & (setup.site == code_of("site", limb_sites[-1])),
+        setup.is_single_limb & (setup.site == code_of("site", "expiratory_limb")),
     )
     refusal = np.zeros(len(setup), np.int8)
     for code in range(len(reasons), 0, -1):

@@ -62,7 +62,8 @@ def _along_limb(setup: Setup, sized: Sized, constants: Constants) -> AtWye:
     parts, breath, output = way_to_wye(setup, constants), cycle(setup), emission(setup)
     kept = wye.dispersed(parts, breath, output)
     rest = wye.swept(parts, breath, output)
-    rest = wye.Arrivals(1 - kept.share, rest.mean_s, rest.variance_s2)
+    unused = np.maximum(1 - kept.share, 0.0)
+    rest = wye.Arrivals(unused, rest.mean_s, rest.variance_s2)
     return AtWye(
         kept.airborne_frac(sized.loss_per_s), rest.airborne_frac(sized.loss_per_s)
     )

@@ -6,10 +6,9 @@ from collections.abc import Iterator
 
 import numpy as np
 
-from engine.columns import code_of
 from engine.evidence import circuit
 from engine.physics.constants import Constants
-from engine.physics.estimate import Estimate
+from engine.physics.estimate import Estimate, minds_humid_gas
 from engine.physics.setup import (
     BIAS,
     DRYING,
@@ -58,9 +57,7 @@ def humidity_ratio(setup: Setup, constants: Constants) -> np.ndarray:
 
     1 where nothing is open: the humidity is logged, or the generator does not mind.
     """
-    enhanced = setup.generator == code_of("generator", "breath_enhanced_jet")
-    at_airway = setup.is_single_limb & (setup.site == code_of("site", "airway_side"))
-    minds = ~enhanced & ~at_airway
+    minds = minds_humid_gas(setup)
     maybe_dry = (setup.lacks(HUMIDITY) | setup.lacks(HEATER)) & minds
     maybe_humid = setup.lacks(DRYING) & minds
     ratio = np.where(maybe_dry, 1 / constants.humid_frac, 1.0)

@@ -190,18 +190,28 @@ def dispersed(parts: Parts, cycle: Cycle, emission: Emission) -> Arrivals:
     Checked  engine/evidence/published/wye_values.csv
     """
     spread = np.asarray(_spread_ml(parts) / cycle.cycle_ml)
-    falls = np.broadcast_to(np.asarray(cycle.peak_ratio) > _LEAST_FALL, spread.shape)
     lasted_s = np.asarray(emission.stop_s) - np.asarray(emission.start_s)
     puff = lasted_s < float(wye.SHORT_OUTPUT_FRAC) * np.asarray(cycle.cycle_s)
-    found = np.zeros((3, len(spread)))
-    for low, high, is_puff, work in _BY_SPREAD:
+    groups = [
+        ((spread >= low) & (spread < high) & (puff == is_puff), work)
+        for low, high, is_puff, work in _BY_SPREAD
+    ]
+    return _by_group(groups, parts, cycle, emission)
+
+
+def _by_group(
+    groups: Sequence[tuple[np.ndarray, _Work]],
+    parts: Parts,
+    cycle: Cycle,
+    emission: Emission,
+) -> Arrivals:
+    """Each group worked out its own way, steady and falling flow apart."""
+    n = len(groups[0][0])
+    falls = np.broadcast_to(np.asarray(cycle.peak_ratio) > _LEAST_FALL, n)
+    found = np.zeros((3, n))
+    for where, work in groups:
         for falling in (False, True):
-            index = np.flatnonzero(
-                (spread >= low)
-                & (spread < high)
-                & (puff == is_puff)
-                & (falls == falling)
-            )
+            index = np.flatnonzero(where & (falls == falling))
             if len(index) == 0:
                 continue
             breath = _picked(cycle, index)
@@ -264,6 +274,11 @@ def swept(parts: Parts, cycle: Cycle, emission: Emission) -> Arrivals:
 
     The share is exact only as ``1 - dispersed(...).share``; the ages are wanted.
     """
+    everywhere = np.ones(len(_volume_ml(parts)), bool)
+    return _by_group([(everywhere, _swept_ages)], parts, cycle, emission)
+
+
+def _swept_ages(parts: Parts, cycle: Cycle, emission: Emission) -> Arrivals:
     return _averaged(parts, cycle, emission, _swept, int(wye.AGE_NODES_COUNT))
 
 
