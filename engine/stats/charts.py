@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import ArrayLike
@@ -81,6 +82,7 @@ def run_rules(values: ArrayLike, centre: float | None = None) -> RunRules:
     )
 
 
+@lru_cache(maxsize=1024)
 def run_limits(n: int) -> tuple[int, int]:
     """The longest run and the fewest crossings that are still unremarkable."""
     if n < 2:
@@ -89,40 +91,38 @@ def run_limits(n: int) -> tuple[int, int]:
     return round(math.log2(n) + 3), int(fewest)
 
 
+@lru_cache(maxsize=1024)
 def run_false_alarm(n: int, own_median: bool) -> float:
     """How often the two rules signal on ``n`` useful points without any change.
 
-    Exact: every arrangement of points above and below is counted once, by how many
-    are above, how long the present and the longest run, and how many crossings.
-    ``own_median`` true where half of the points lie above by construction.
+    Exact: the chance of every arrangement of points above and below is followed point
+    by point, by the side and length of the present run, the crossings so far and how
+    many lie above. ``own_median`` true where half lie above by construction.
     """
-    run_limit, crossings_limit = run_limits(n)
-    quiet = _quiet_arrangements(n, run_limit, crossings_limit)
-    if own_median:
-        return 1 - float(quiet[n // 2]) / math.comb(n, n // 2)
-    return 1 - float(sum(quiet)) / 2**n
+    run_limit, fewest = run_limits(n)
+    quiet = _quiet_chance(n, run_limit, fewest)
+    if not own_median:
+        return 1 - float(quiet.sum())
+    return 1 - float(quiet[n // 2] / stats.binom.pmf(n // 2, n, 0.5))
 
 
-def _quiet_arrangements(n: int, run_limit: int, fewest: int) -> list[int]:
-    """Arrangements that do not signal, by how many points lie above the line."""
-    # ways[(last above?, length of the present run, crossings, how many above)]
-    ways = {(1, 1, 0, 1): 1, (0, 1, 0, 0): 1}
+def _quiet_chance(n: int, run_limit: int, fewest: int) -> np.ndarray:
+    """Chance of no signal, by how many points lie above the line (n + 1 values)."""
+    # [side: below, above][length of the run][crossings, at most fewest][points above]
+    chance = np.zeros((2, run_limit + 1, fewest + 1, n + 1))
+    chance[0, 1, 0, 0] = chance[1, 1, 0, 1] = 0.5
     for _ in range(n - 1):
-        following: dict[tuple[int, int, int, int], int] = {}
-        for (last, run, crossed, above), count in ways.items():
-            for side in (0, 1):
-                longer = run + 1 if side == last else 1
-                if longer > run_limit:
-                    continue
-                turned = min(crossed + (side != last), fewest)
-                key = (side, longer, turned, above + side)
-                following[key] = following.get(key, 0) + count
-        ways = following
-    quiet = [0] * (n + 1)
-    for (_, _, crossed, above), count in ways.items():
-        if crossed >= fewest:
-            quiet[above] += count
-    return quiet
+        after = np.zeros_like(chance)
+        after[0, 2:, :, :] = chance[0, 1:-1, :, :] / 2
+        after[1, 2:, :, 1:] = chance[1, 1:-1, :, :-1] / 2
+        turned = chance.sum(axis=1) / 2
+        crossed = np.zeros_like(turned)
+        crossed[:, 1:, :] = turned[:, :-1, :]
+        crossed[:, -1, :] += turned[:, -1, :]
+        after[0, 1, :, :] += crossed[1]
+        after[1, 1, :, 1:] += crossed[0][:, :-1]
+        chance = after
+    return chance[:, :, fewest, :].sum(axis=(0, 1))
 
 
 def exact_p_limits(
