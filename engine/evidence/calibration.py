@@ -16,18 +16,18 @@ LIMB_TANKS_COUNT = Number(
     note="4 to 16 fit about as well",
 )
 SETTLING_MULTIPLIER_RATIO = Number(
-    value=0.7438,
-    low=0.343,
-    high=1.61,
+    value=0.7457,
+    low=0.344,
+    high=1.62,
     unit="ratio",
     source=CALIBRATION_FIT,
     where="settling in the limb over well-mixed settling",
     known="fitted",
 )
 HUMID_SURVIVAL_FRAC = Number(
-    value=0.6196,
+    value=0.6195,
     low=0.552,
-    high=0.683,
+    high=0.682,
     unit="frac",
     source=CALIBRATION_FIT,
     where="dose through an actively humidified circuit over dry gas",
@@ -43,8 +43,8 @@ WYE_SURVIVAL_FRAC = Number(
     known="fitted",
 )
 CHAMBER_SURVIVAL_FRAC = Number(
-    value=0.9341,
-    low=0.819,
+    value=0.9343,
+    low=0.82,
     high=0.978,
     unit="frac",
     source=CALIBRATION_FIT,
@@ -61,7 +61,7 @@ MESH_EMITTED_FRAC = Number(
     known="fitted",
 )
 ULTRASONIC_EMITTED_FRAC = Number(
-    value=0.6997,
+    value=0.6998,
     low=0.562,
     high=0.809,
     unit="frac",
@@ -70,16 +70,16 @@ ULTRASONIC_EMITTED_FRAC = Number(
     known="fitted",
 )
 INHALER_EMITTED_FRAC = Number(
-    value=0.4683,
+    value=0.4681,
     low=0.398,
-    high=0.54,
+    high=0.539,
     unit="frac",
     source=CALIBRATION_FIT,
     where="label dose leaving the spacer as aerosol",
     known="fitted",
 )
 JET_EMITTED_FRAC = Number(
-    value=0.5753,
+    value=0.5752,
     low=0.478,
     high=0.667,
     unit="frac",
@@ -106,7 +106,7 @@ BREATH_ENHANCED_EMITTED_FRAC = Number(
     known="fitted",
 )
 DELIVERED_SPREAD_LOGIT = Number(
-    value=0.5562,
+    value=0.556,
     unit="logit",
     source=CALIBRATION_FIT,
     where="spread of single results about the estimate, their study left out",
