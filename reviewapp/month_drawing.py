@@ -22,8 +22,8 @@ from reviewapp.svg import (
     text,
 )
 
-BAR = (190.0, 26.0)
-SPARK = (150.0, 34.0)
+BAR = (136.0, 26.0)
+SPARK = (104.0, 34.0)
 CHART = (860.0, 236.0)
 LETTERS = 26.0  # room below a chart for its month letters
 
@@ -196,11 +196,9 @@ def _limit_steps(
         for i, value in enumerate(limits):
             if math.isfinite(value):
                 y = to_y(value)
-                parts.append(
-                    line(
-                        to_x(i) - half, y, to_x(i) + half, y, colours["faint"], 1, "3 3"
-                    )
-                )
+                start = max(to_x(i) - half, to_x(0) - 12)
+                end = min(to_x(i) + half, right - 2)
+                parts.append(line(start, y, end, y, colours["faint"], 1, "3 3"))
         if math.isfinite(limits[-1]):
             y = to_y(limits[-1])
             words = f"{name} {_written(each, limits[-1])}"

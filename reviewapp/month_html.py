@@ -20,7 +20,10 @@ from reviewapp.units_drawing import funnel_svg, units_svg
 
 UnitsOf = Mapping[str, Units]
 Marks = Sequence[tuple[str, str]]
-COLUMNS = "minmax(190px,1.5fr) 92px 190px 92px 150px minmax(180px,1.6fr)"
+COLUMNS = (
+    "minmax(150px,1.5fr) 76px minmax(110px,1fr) 78px minmax(84px,.75fr)"
+    " minmax(140px,1.5fr)"
+)
 
 
 def style(colours: Colours) -> str:
@@ -29,13 +32,13 @@ def style(colours: Colours) -> str:
         "<style>"
         ".m-table{border-top:1px solid var(--m-line)}"
         f".m-table{{--m-line:{colours['lost']};--m-faint:{colours['faint']}}}"
-        f".m-head,.m-row{{display:grid;grid-template-columns:{COLUMNS};gap:14px;"
+        f".m-head,.m-row{{display:grid;grid-template-columns:{COLUMNS};gap:12px;"
         "align-items:center}"
         ".m-head{font-size:.78rem;color:var(--m-faint);padding:4px 22px 4px 22px}"
         ".m-table details{border-top:1px solid var(--m-line)}"
         ".m-table summary{cursor:pointer;padding:5px 4px;list-style-position:outside;"
         "margin-left:18px}"
-        ".m-row b{font-weight:600;line-height:1.25}"
+        ".m-row{line-height:1.3}.m-row b{font-weight:600}"
         ".m-row .m-n{text-align:right;font-variant-numeric:tabular-nums}"
         ".m-row small,.m-open small{color:var(--m-faint);font-size:.8rem}"
         ".m-figure{text-align:right;font-weight:650;font-variant-numeric:tabular-nums}"
@@ -220,9 +223,10 @@ def _how(each: Line) -> tuple[str, ...]:
         )
     if each.cusum is not None:
         made.append(
-            f"Cumulative sum {each.cusum.sums[-1]:.1f} of {each.cusum.limit:.1f}, tuned"
-            f" to {100 * each.cusum.p0:.0f} % becoming {100 * each.cusum.p1:.0f} %; one"
-            f" signal without cause in {each.cusum.false_alarm_points:.0f} months."
+            f"Cumulative sum {each.cusum.sums[-1]:.2g}, signals above"
+            f" {each.cusum.limit:.2g}; tuned to {100 * each.cusum.p0:.0f} % becoming"
+            f" {100 * each.cusum.p1:.0f} %; at most one signal without cause in"
+            f" {each.cusum.false_alarm_points:.0f} months."
         )
     if math.isfinite(each.design_effect) and each.design_effect > 1.05:
         made.append(f"Design effect {each.design_effect:.1f}.")

@@ -13,7 +13,7 @@ from engine.evidence.review import FUNNEL_UNITS_COUNT
 from engine.replay import Replay
 from engine.reviews import month_rows as rows
 from engine.reviews.figures import percent, percent_range
-from engine.reviews.indicators import BY_ID, Indicator
+from engine.reviews.indicators import BY_ID, OF_TREATMENTS, Indicator
 from engine.reviews.wording import counted, listed
 from engine.stats.cells import hidden_cells
 from engine.stats.funnel import dispersion, funnel_limits, shrunken
@@ -48,8 +48,18 @@ def units_of(replay: Replay, month: str, indicator_id: str) -> Units:
     if indicator is None or indicator.kind != "treatments":
         raise UnknownId(f"no indicator {indicator_id} that is counted by unit")
     rows.make_cells(replay)
+    return _units(replay, indicator, rows.unit_counts(replay, month))
+
+
+def every_units(replay: Replay, month: str) -> dict[str, Units]:
+    """The units of a month on every indicator of treatments, by its id."""
+    rows.make_cells(replay)
     found = rows.unit_counts(replay, month)
-    own = found[found["indicator"] == indicator_id].reset_index(drop=True)
+    return {each.id: _units(replay, each, found) for each in OF_TREATMENTS}
+
+
+def _units(replay: Replay, indicator: Indicator, found: pd.DataFrame) -> Units:
+    own = found[found["indicator"] == indicator.id].reset_index(drop=True)
     table = _table(replay, own)
     shown = table[~table["hidden"] & (table["known"] > 0)]
     known = shown["known"].sum()
