@@ -14,6 +14,7 @@ from urllib.parse import urlencode
 from engine.reviews.month import Month
 from engine.reviews.month_lines import Line
 from engine.reviews.month_units import Units
+from engine.stats.cusum import ShareCusum
 from reviewapp.month_drawing import interval_bar_svg, run_chart_svg, spark_svg
 from reviewapp.svg import Colours
 from reviewapp.units_drawing import funnel_svg, units_svg
@@ -222,15 +223,22 @@ def _how(each: Line) -> tuple[str, ...]:
             f" {run.useful_count}."
         )
     if each.cusum is not None:
-        made.append(
-            f"Cumulative sum {each.cusum.sums[-1]:.2g}, signals above"
-            f" {each.cusum.limit:.2g}; tuned to {100 * each.cusum.p0:.0f} % becoming"
-            f" {100 * each.cusum.p1:.0f} %; at most one signal without cause in"
-            f" {each.cusum.false_alarm_points:.0f} months."
-        )
+        made.append(_cumulative(each.cusum))
     if math.isfinite(each.design_effect) and each.design_effect > 1.05:
         made.append(f"Design effect {each.design_effect:.1f}.")
     return tuple(made)
+
+
+def _cumulative(cusum: ShareCusum) -> str:
+    """What the cumulative sum stands at, and what it is tuned to find."""
+    limit = f"above {cusum.limit:.1f}"
+    if cusum.limit < 0.05:
+        limit = "as soon as it leaves 0, for months this large tell by themselves"
+    return (
+        f"Cumulative sum {cusum.sums[-1]:.1f}, signals {limit}; tuned to"
+        f" {100 * cusum.p0:.0f} % becoming {100 * cusum.p1:.0f} %, at most one signal"
+        f" without cause in {cusum.false_alarm_points:.0f} months."
+    )
 
 
 def _small(lines: Sequence[str]) -> str:

@@ -8,6 +8,7 @@ from calendar import month_name
 from engine.errors import NothingToReview
 
 NO_FIGURE = "–"
+PER_CENT = "\N{NO-BREAK SPACE}%"  # a figure and its sign stay on one line
 
 
 def percent(share: float, places: int | None = None) -> str:
@@ -16,13 +17,13 @@ def percent(share: float, places: int | None = None) -> str:
     if places is None:
         places = 1 if 0 < abs(value) < 9.95 and abs(value - round(value)) > 0.05 else 0
     if round(abs(value), places) == 0 and value != 0 and places:
-        return f"under {10**-places:g} %"
-    return f"{value:.{places}f} %"
+        return f"under {10**-places:g}{PER_CENT}"
+    return f"{value:.{places}f}{PER_CENT}"
 
 
 def percent_range(low: float, high: float) -> str:
     """``66 to 76 %``; as many places as tell the two ends apart."""
-    return f"{_plain(100 * low)} to {_plain(100 * high)} %"
+    return f"{_plain(100 * low)} to {_plain(100 * high)}{PER_CENT}"
 
 
 def points(low: float, high: float | None = None) -> str:

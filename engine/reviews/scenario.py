@@ -18,6 +18,7 @@ from engine.replay import Replay, Scenario, load_scenario, replay
 from engine.replay.run import Progress
 from engine.reviews import scenario_rows as rows
 from engine.reviews.figures import (
+    PER_CENT,
     inside,
     month_words,
     percent_range,
@@ -184,7 +185,7 @@ def compared(
     facts = _facts(was, scenario, asked)
     return Comparison(
         scenario=scenario,
-        sentence=_sentence(scenario, since, until, doses, outcomes, filters),
+        sentence=_sentence(scenario, since, until, outcomes, filters),
         change=_change(scenario, facts),
         since=since,
         until=until,
@@ -258,7 +259,7 @@ def _outcome_says(title: str, values: Mapping[str, float], count: int) -> str:
 
 def percent_of(share: float, digits: int = 2) -> str:
     """A share of the dose to so many digits."""
-    return f"{significant(100 * share, digits)} %"
+    return f"{significant(100 * share, digits)}{PER_CENT}"
 
 
 def apart(before: float, after: float) -> tuple[str, str]:
@@ -407,17 +408,17 @@ def _filters_sentence(filters: Mapping[str, int]) -> str:
 def _change(scenario: Scenario, facts: pd.DataFrame) -> str:
     parts = []
     for row in facts.to_dict("records"):
+        changed = counted(row["from_other"], "treatment")
         text = (
-            f"{row['label']} becomes {row['value']} for {row['where']}:"
-            f" {row['from_other']:,} were otherwise, {row['already']:,} were so already"
+            f"{row['label']}: {row['value']}, for {row['where']}. That changes"
+            f" {changed}; {row['already']:,} had it so already"
         )
         if row["from_unknown"]:
-            text += f", {row['from_unknown']:,} were not recorded and are taken as so"
+            text += f"; {row['from_unknown']:,} were not recorded and are taken as so"
         parts.append(text)
     if scenario.policy:
-        parts.append(
-            f"{counted(len(scenario.policy), 'setting')} of the policy changed"
-        )
+        settings = counted(len(scenario.policy), "setting")
+        parts.append(f"{settings} of the policy changed")
     return f"{'. '.join(parts)}." if parts else "Nothing is changed."
 
 
@@ -425,43 +426,49 @@ def _sentence(
     scenario: Scenario,
     since: str,
     until: str,
-    doses: pd.Series,
     outcomes: tuple[Outcome, ...],
     filters: Mapping[str, int],
 ) -> str:
     span = month_words(since)
     if since != until:
         span = f"{span} to {month_words(until)}"
-    opening = (
-        f"{scenario.title}, {span}: {counted(int(doses['compared']), 'treatment')}"
-        f" could be compared of {doses['treatments']:,.0f}."
-    )
-    moved = [
-        f"the {inside(each.title)} would go from {' to '.join(_touched(each))}"
-        + ("" if each.moves else " (within its band)")
-        for each in outcomes
-        if each.changed_count and each.before_where != each.after_where
-    ]
-    most = max((each.changed_count for each in outcomes), default=0)
-    if not moved:
-        told = "No estimated share would change."
-    else:
-        told = (
-            f"By the estimate, in the {counted(most, 'treatment')} it touches,"
-            f" {listed(moved)}."
-        )
+    told = _moves(outcomes)
     extra = filters["after"] - filters["before"]
+    cost = ""
     if extra > 0:
         cost = f" It takes {counted(extra, 'more filter', 'more filters')}."
     elif extra < 0:
         cost = f" It takes {counted(-extra, 'filter fewer', 'filters fewer')}."
-    else:
-        cost = ""
-    return f"{opening} {told}{cost}"
+    return f"{scenario.title}, {span}. {told}{cost}"
 
 
-def _touched(outcome: Outcome) -> tuple[str, str]:
-    return apart(outcome.before_where, outcome.after_where)
+_GOES = {
+    "delivered": "would pass the tube",
+    "room": "would reach the room",
+    "sensor_side": "would reach the expiratory sensors",
+}
+
+
+def _moves(outcomes: tuple[Outcome, ...]) -> str:
+    """Where the dose would go instead; sensors are named only if the room is not."""
+    moved = [
+        each
+        for each in outcomes
+        if each.changed_count and each.before_where != each.after_where
+    ]
+    if not moved:
+        return "No estimated share of the dose would change."
+    if len(moved) > 1:
+        moved = [each for each in moved if each.id != "sensor_side"]
+    parts = []
+    for each in moved:
+        before, after = apart(each.before_where, each.after_where)
+        sure = "" if each.moves else " (within its band)"
+        parts.append(
+            f"{after} of the dose {_GOES[each.id]} where it was {before}{sure}"
+        )
+    count = counted(max(each.changed_count for each in moved), "treatment")
+    return f"By the estimate, in the {count} it touches, {listed(parts)}."
 
 
 def _unchanged(
@@ -483,11 +490,16 @@ def _unchanged(
         more = f" and {counted(rest, 'other rule')}" if rest else ""
         told.append(f"Flags that stay as they are: {listed(names)}{more}.")
     blind = int(doses["treatments"] - doses["compared"])
-    if blind:
-        told.append(
-            f"{counted(blind, 'treatment')} lack what an estimate needs, before or"
-            " after; they are left out of both sides."
+    told.append(
+        f"{doses['compared']:,.0f} of {counted(int(doses['treatments']), 'treatment')}"
+        " could be compared"
+        + (
+            f"; {blind:,} lack what an estimate needs, before or after, and are left"
+            " out of both sides."
+            if blind
+            else "."
         )
+    )
     return tuple(told)
 
 

@@ -86,7 +86,7 @@ def rules_table(comparison: Comparison, changed_only: bool = True) -> str:
             row["title"],
             f"{row['before']:,}",
             f"{row['after']:,}",
-            f"{row['difference']:+,}".replace("-", "−"),
+            _signed(row["difference"]),
             f"{row['unknown_before']:,}",
             f"{row['unknown_after']:,}",
         )
@@ -94,3 +94,7 @@ def rules_table(comparison: Comparison, changed_only: bool = True) -> str:
     ]
     heads = ("Rule", "Question", "Flags", "would be", "Difference", "Cannot tell")
     return table((*heads, "would be"), rows, "  rrrrr")
+
+
+def _signed(value: int) -> str:
+    return "0" if value == 0 else f"{value:+,}".replace("-", "−")

@@ -7,14 +7,13 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from html import escape
-from typing import Any
 
 from engine.reviews.sessions import Session
 from engine.reviews.topics import Example, Sheet, Topics
 from engine.reviews.wording import counted
 from engine.rules.wording import word
 from reviewapp.reports.incident import _list, _p, table
-from reviewapp.svg import LIGHT
+from reviewapp.svg import LIGHT, Colours
 from reviewapp.topic_drawing import places_svg, ranking_svg, weeks_svg
 
 Draw = Callable[[Example], str]
@@ -35,28 +34,64 @@ def topic_sections(review: Topics, draw: Draw | None = None) -> list[tuple[str, 
     ]
 
 
-def sheet_html(sheet: Sheet, draw: Draw | None = None, colours=LIGHT) -> str:
-    """One topic: seen, where, why, both sides, two circuits, a system change."""
+def sheet_html(
+    sheet: Sheet,
+    draw: Draw | None = None,
+    colours: Colours = LIGHT,
+    folded: bool = False,
+) -> str:
+    """One topic: seen, where, why, both sides, two circuits, a system change.
+
+    ``folded``  the evidence is closed until asked for, as on screen
+    """
+    change = f"{sheet.topic.change} ({sheet.topic.change_strength})"
     parts = [
         _p(sheet.sentence),
         f"<p><small>{escape(sheet.seen)}</small></p>",
-        "<h3>Where</h3>",
-        _p(sheet.where),
-        f'<div style="max-width:460px">{places_svg(sheet, colours)}</div>',
-        "<h3>Why it matters</h3>",
-        _p(sheet.topic.why),
-        _list(sheet.evidence),
+        _two(
+            _head("Where")
+            + _p(sheet.where)
+            + f'<div style="max-width:440px">{places_svg(sheet, colours)}</div>',
+            _head("Why it matters")
+            + _p(sheet.topic.why)
+            + _head("The system change beside the teaching")
+            + _p(change)
+            + _head("What the department has written down")
+            + _p(sheet.table),
+        ),
+        _evidence(sheet, folded),
     ]
-    if sheet.against:
-        parts += ["<h3>The other side</h3>", _list(sheet.against)]
-    parts += ["<h3>What the department has written down</h3>", _p(sheet.table)]
-    for number, example in enumerate(sheet.examples, start=1):
-        parts += [f"<h3>Example {number}</h3>", example_html(example, draw)]
-    parts += [
-        "<h3>The system change that goes beside the teaching</h3>",
-        _p(f"{sheet.topic.change} ({sheet.topic.change_strength})"),
-    ]
+    if sheet.examples:
+        drawn = [
+            _head(f"Example {number}") + example_html(example, draw)
+            for number, example in enumerate(sheet.examples, start=1)
+        ]
+        parts.append(_two(*drawn) if draw is None else "".join(drawn))
     return "".join(parts)
+
+
+def _evidence(sheet: Sheet, folded: bool) -> str:
+    """What the rules rest on, and the works that found otherwise, side by side."""
+    title = "What it rests on"
+    body = _list(sheet.evidence)
+    if sheet.against:
+        title += ", and who found otherwise"
+        body = _two(body, _head("The other side") + _list(sheet.against))
+    if not folded:
+        return _head(title) + body
+    return f"<details><summary>{escape(title)}</summary>{body}</details>"
+
+
+def _head(words: str) -> str:
+    return f'<p style="margin:.8em 0 .2em"><b>{escape(words)}</b></p>'
+
+
+def _two(*columns: str) -> str:
+    """Columns side by side where there is room."""
+    cells = "".join(
+        f'<div style="flex:1 1 340px;min-width:0">{column}</div>' for column in columns
+    )
+    return f'<div style="display:flex;flex-wrap:wrap;gap:0 32px">{cells}</div>'
 
 
 def example_html(example: Example, draw: Draw | None = None) -> str:
@@ -103,7 +138,7 @@ def weights_table(review: Topics) -> str:
     return table(heads, rows, "  rrrr")
 
 
-def sessions_html(sessions: tuple[Session, ...], colours: Any = LIGHT) -> str:
+def sessions_html(sessions: tuple[Session, ...], colours: Colours = LIGHT) -> str:
     """Each past session with its weeks and what they can and cannot show."""
     if not sessions:
         return _p("No session has been recorded.")

@@ -110,7 +110,7 @@ def _sheet(number: int, sheet: Sheet, review: Topics) -> None:
         f" it the set would lose {left_out}."
     )
     st.markdown(
-        sheet_html(sheet, parts.example_drawing, theme.colours()),
+        sheet_html(sheet, parts.example_drawing, theme.colours(), folded=True),
         unsafe_allow_html=True,
     )
     flagged = [row for row in sheet.rules.to_dict("records") if row["flags"]]

@@ -88,7 +88,7 @@ def test_none_found_says_what_would_still_fit(replayed):
     says = review_month(replayed(treatment=rows), "2026-03").line("I20").says
     # 1 - 0.05^(1/59) is 5 %, the rule of 59 (sampling tables).
     assert "none in" in says
-    assert "up to 5 %" in says
+    assert "up to 5\N{NO-BREAK SPACE}%" in says
 
 
 def test_all_unknown_is_never_a_zero(replayed):

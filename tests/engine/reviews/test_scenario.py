@@ -78,7 +78,7 @@ def test_a_scenario_that_touches_nothing_says_so(replayed):
     rows = treatments("2026-03", 30, generator="jet", synchrony="continuous")
     done = against(replayed(treatment=rows), find_scenario("mesh_at_humidifier_inlet"))
     assert all(each.changed_count == 0 for each in done.outcomes)
-    assert "No estimated share would change" in done.sentence
+    assert "No estimated share of the dose would change" in done.sentence
 
 
 def test_longer_hours_need_fewer_filters_and_change_no_dose(replayed):
