@@ -22,8 +22,8 @@ from reviewapp.units_drawing import funnel_svg, units_svg
 UnitsOf = Mapping[str, Units]
 Marks = Sequence[tuple[str, str]]
 COLUMNS = (
-    "minmax(150px,1.5fr) 76px minmax(110px,1fr) 78px minmax(84px,.75fr)"
-    " minmax(140px,1.5fr)"
+    "minmax(128px,1.5fr) 66px minmax(88px,1fr) 70px minmax(68px,.75fr)"
+    " minmax(112px,1.4fr)"
 )
 
 
@@ -49,7 +49,7 @@ def style(colours: Colours) -> str:
         ".m-open{padding:6px 22px 18px 40px}"
         ".m-two{display:flex;flex-wrap:wrap;gap:24px;margin-top:10px}"
         ".m-two>div{flex:1 1 380px;max-width:540px}"
-        "@media(max-width:1000px){.m-head{display:none}"
+        "@media(max-width:620px){.m-head{display:none}"
         ".m-row{grid-template-columns:1fr 92px 170px}"
         ".m-row .m-change,.m-row .m-spark,.m-row .m-n{grid-column:auto}}"
         "@media print{.m-table details{break-inside:avoid}"

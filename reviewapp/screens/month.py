@@ -8,6 +8,7 @@ from typing import Any
 import streamlit as st
 
 from engine.errors import EngineError
+from engine.reviews.chart_check import CHART, chart_check, draw_sample
 from engine.reviews.figures import month_words
 from engine.reviews.incident_words import STRENGTHS
 from engine.reviews.indicators import INDICATORS
@@ -39,6 +40,7 @@ def show() -> None:
     _look(month)
     _dose(month)
     _confirmations(month)
+    _chart_check(month)
     _decisions(month)
     _sign_off(month)
     _report(month)
@@ -185,6 +187,46 @@ def _confirmations(month: Month) -> None:
         )
 
 
+def _chart_check(month: Month) -> None:
+    """A sample drawn once, read blind; what it says of flags and of what they miss."""
+    st.subheader("Chart check")
+    found = chart_check(data.replay(), data.journal(), month.month)
+    st.markdown(parts.plain(found.sentence))
+    if not found.charts:
+        _draw_sample(month)
+        return
+    with st.expander(f"Read the {len(found.charts)} charts drawn"):
+        st.caption(
+            "Read the chart itself before the screen of the treatment, and without the"
+            " other reviewer's word."
+        )
+        with st.form("chart", clear_on_submit=True):
+            chart = st.selectbox("Chart", found.charts)
+            said = st.radio("In this setup", list(READ), horizontal=True)
+            reason = st.text_input("What was seen")
+            who, role = parts.signature("chart")
+            if st.form_submit_button("Keep what was read"):
+                new = READ[said]
+                _keep("verdict", f"{chart}:{CHART}", new, who, role, reason)
+
+
+READ = {
+    "something is to be acted on": "confirmed",
+    "nothing is": "dismissed",
+    "the chart does not tell": "needs_chart_check",
+}
+
+
+def _draw_sample(month: Month) -> None:
+    with st.expander("Draw charts to check"), st.form("sample"):
+        size = st.number_input("Charts", 10, 400, 60, step=10)
+        seed = st.number_input("Seed, kept with the sample", 1, 999_999, 1)
+        who, role = parts.signature("sample")
+        if st.form_submit_button("Draw"):
+            drawn = draw_sample(data.replay(), month.month, int(size), int(seed))
+            _keep("note", f"sample:{month.month}", drawn.record, who, role)
+
+
 def _decisions(month: Month) -> None:
     st.subheader("Decisions and actions")
     if month.decisions.empty:
@@ -286,10 +328,12 @@ def _report(month: Month) -> None:
     )
 
 
-def _keep(action: str, object: str, new: Any, who: str, role: str) -> None:
+def _keep(
+    action: str, object: str, new: Any, who: str, role: str, reason: str = ""
+) -> None:
     try:
         data.keep(
-            action=action, object=object, new=new, actor=who, role=role, reason=""
+            action=action, object=object, new=new, actor=who, role=role, reason=reason
         )
     except EngineError as problem:
         st.warning(escape(str(problem)))
