@@ -16,7 +16,7 @@ from engine.physics.constants import FITTED, Constants
 from engine.physics.estimate import delivered_frac
 from engine.physics.setup import DISTANCE, GENERATORS, Setup, setup_of, stacked
 from engine.physics.sizes import Sized, sized_of
-from engine.physics.split import along_limb, at_wye, on_patient_side
+from engine.physics.split import along_limb, inhaled_only, on_patient_side
 from engine.physics.tries import humidity_ratio, other_setups
 
 # Sites where a generator of each kind can be put; common practice, no source.
@@ -139,7 +139,7 @@ def _here(
     index = np.flatnonzero(np.isnan(here))
     if len(index):
         odd, sizes = setup.pick(index), sized.pick(index)
-        inhaled = at_wye(odd, sizes, constants).inhaled
+        inhaled = inhaled_only(odd, sizes, constants)
         here[index] = delivered_frac(odd, inhaled, sizes, constants)
     return here
 

@@ -53,6 +53,21 @@ def at_wye(setup: Setup, sized: Sized, constants: Constants) -> AtWye:
     return AtWye(inhaled, gone)
 
 
+def inhaled_only(setup: Setup, sized: Sized, constants: Constants) -> np.ndarray:
+    """What is inhaled at each treatment's own site; the rest is not followed."""
+    inhaled = np.zeros_like(sized.loss_per_s)
+    airway = setup.site == _AIRWAY_SIDE
+    index = np.flatnonzero(airway)
+    if len(index):
+        part = on_patient_side(setup.pick(index), sized.pick(index), constants)
+        inhaled[index] = part.inhaled
+    index = np.flatnonzero(~airway & (setup.site != _EXPIRATORY))
+    if len(index):
+        arrivals = along_limb(setup.pick(index), constants)
+        inhaled[index] = arrivals.airborne_frac(sized.loss_per_s[index])
+    return inhaled
+
+
 def along_limb(setup: Setup, constants: Constants) -> wye.Arrivals:
     """Only what is inhaled from sites on the inspiratory side, sizes apart."""
     return wye.dispersed(way_to_wye(setup, constants), cycle(setup), emission(setup))
