@@ -182,6 +182,8 @@ def _opened(
         )
         parts.append(_small(units.notes))
     parts.append(_small(each.notes))
+    if each.indicator.kind == "rate":
+        parts.append(f"<p>{escape(month.rare_sentence)}</p>")
     if link is not None:
         parts.append(_links(each, month, link))
     return f'<div class="m-open">{"".join(parts)}</div>'

@@ -66,6 +66,7 @@ class Month:
     dose: dict[str, float]
     dose_sentence: str
     exposure_sentence: str
+    rare_sentence: str
     forgone: pd.DataFrame
     confirmations: Confirmations
     decisions: pd.DataFrame
@@ -149,6 +150,7 @@ def review_month(
         dose=dose,
         dose_sentence=words.dose_sentence(dose),
         exposure_sentence=words.exposure_sentence(dose),
+        rare_sentence=_rare(replay, until),
         forgone=replay.frame(
             rows.FORGONE,
             {
@@ -227,6 +229,15 @@ def _is_whole(replay: Replay, month: str) -> bool:
 def _dose(replay: Replay, month: str, unit: str | None) -> dict[str, float]:
     found = replay.frame(rows.DOSE_OF_MONTH, {"month": month, "unit": unit})
     return {str(name): float(value) for name, value in found.iloc[0].items()}
+
+
+def _rare(replay: Replay, until: datetime) -> str:
+    """Events and treatments of the whole department up to the end of the month."""
+    places = replay.frame(rows.EVENT_PLACES, {"until": until})["place"]
+    given = replay.frame(
+        "SELECT count(*) AS n FROM asked WHERE started_at < $until", {"until": until}
+    )
+    return words.rare_events(places.to_numpy(float), float(given["n"].iloc[0]))
 
 
 def _snapshot(

@@ -171,15 +171,24 @@ SELECT local_month, count(*) AS events FROM (
 GROUP BY 1
 """
 
-EVENT_TIMES = """
-SELECT DISTINCT ventilator_token, date_trunc('day', at_time) AS on_day FROM (
-  SELECT ventilator_token, checked_at AS at_time FROM sensor_check
-  WHERE sensor = 'expiratory_flow' AND outcome IN ('failed', 'replaced')
-  UNION ALL SELECT ventilator_token, happened_at FROM service_event
-            WHERE kind = 'fault'
-  UNION ALL SELECT ventilator_token, happened_at FROM incident
-            WHERE sensor = 'expiratory_flow')
-ORDER BY 2
+# Treatments given up to each event; two events of one ventilator on one day are one.
+EVENT_PLACES = """
+WITH event AS (
+  SELECT DISTINCT ventilator_token, date_trunc('day', at_time) AS on_day FROM (
+    SELECT ventilator_token, checked_at AS at_time FROM sensor_check
+    WHERE sensor = 'expiratory_flow' AND outcome IN ('failed', 'replaced')
+    UNION ALL SELECT ventilator_token, happened_at FROM service_event
+              WHERE kind = 'fault'
+    UNION ALL SELECT ventilator_token, happened_at FROM incident
+              WHERE sensor = 'expiratory_flow')
+),
+numbered AS (
+  SELECT started_at, row_number() OVER (ORDER BY started_at, treatment_id) AS n
+  FROM asked
+)
+SELECT e.on_day, coalesce(t.n, 0)::DOUBLE AS place
+FROM event e ASOF LEFT JOIN numbered t ON e.on_day >= t.started_at
+WHERE e.on_day < $until ORDER BY 1
 """
 
 PERCENTILES = [i / 100 for i in range(1, 100)]

@@ -4,12 +4,15 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 
+import numpy as np
 import pandas as pd
 
+from engine.evidence.review import BASELINE_POINTS_COUNT, RUN_POINTS_COUNT
 from engine.reviews.figures import inside, month_words, percent, significant
 from engine.reviews.month_journal import Confirmations
 from engine.reviews.month_lines import Line
 from engine.reviews.wording import counted, listed
+from engine.stats.charts import g_limits
 
 ROOM_AND_SENSOR = (
     "No exposure limit exists for most of these drugs: these two are for the trend."
@@ -149,3 +152,31 @@ def exposure_sentence(dose: Mapping[str, float]) -> str:
         f" expiratory sensors, from {counted(int(dose['estimated']), 'treatment')} of"
         f" {dose['treatments']:,.0f}. {ROOM_AND_SENSOR}"
     )
+
+
+def rare_events(places: np.ndarray, treatments: float) -> str:
+    """Flow-sensor events by treatments between them: a long gap is good.
+
+    ``places``  how many treatments had been given at each event, in order
+    """
+    if not len(places):
+        return (
+            f"No flow-sensor event in {counted(int(treatments), 'treatment')} so far."
+        )
+    since = int(treatments - places[-1])
+    opening = (
+        f"{counted(len(places), 'flow-sensor event')} so far; the last one"
+        f" {counted(since, 'treatment')} ago"
+    )
+    gaps = np.diff(places)
+    needed = int(RUN_POINTS_COUNT)
+    if len(gaps) < needed:
+        return f"{opening}. Limits of the gaps need {needed + 1} events."
+    limits = g_limits(gaps)
+    told = f"{opening}; {limits.mean:,.0f} lie between two on average"
+    if since > limits.high:
+        return f"{told}. So long a gap would be rare by chance: better than before."
+    if gaps[-1] < limits.low:
+        return f"{told}. So short a gap would be rare by chance."
+    firm = "" if len(gaps) >= int(BASELINE_POINTS_COUNT) else " (provisional)"
+    return f"{told}; up to {limits.high:,.0f} is chance{firm}."

@@ -288,3 +288,21 @@ def test_no_sentence_blames(replayed):
     told = [month.sentence, month.happened, month.changed, month.sure, *month.to_decide]
     told += [text for each in month.lines for text in (each.says, each.changed)]
     assert not [word for word in FORBIDDEN for text in told if word in text.lower()]
+
+
+def test_rare_events_are_told_by_the_treatments_between_them(replayed):
+    checks = [
+        {
+            "check_id": f"C{day}",
+            "ventilator_token": "V1",
+            "sensor": "expiratory_flow",
+            "checked_at": f"2026-03-{day:02d} 05:00",
+            "outcome": "failed",
+        }
+        for day in (4, 10)
+    ]
+    done = replayed(treatment=treatments("2026-03", 54), sensor_check=checks)
+    told = review_month(done, "2026-03").rare_sentence
+    # Two a day from the 1st at 06:00: 18 before the 10th, 54 in all.
+    assert told.startswith("2 flow-sensor events so far; the last one 36 treatments")
+    assert "need 11 events" in told
