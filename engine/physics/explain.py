@@ -217,7 +217,7 @@ def _hme(t: _Treatment) -> Stage:
 
 def _tube(t: _Treatment) -> Stage:
     setup = t.setup
-    inspiratory_lpm = setup.tidal_ml / (setup.inspiratory_s - setup.pause_s)
+    inspiratory_lpm = setup.tidal_ml / setup.moving_s
     return _stage(
         t,
         "Artificial airway",

@@ -123,6 +123,11 @@ class Setup:
     def __len__(self) -> int:
         return len(self.refusal)
 
+    @property
+    def moving_s(self) -> np.ndarray:
+        """Inspiratory time in which gas moves: without the pause."""
+        return self.inspiratory_s - self.pause_s
+
     def pick(self, index: np.ndarray | slice) -> Setup:
         """The same setup for some of the treatments."""
         chosen = {
@@ -159,6 +164,7 @@ def setup_of(rows: Batch) -> Setup:
     single = rows["circuit"] == code_of("circuit", "single_limb")
     mmad_um, gsd = _droplets(rows, gaps)
     inspiratory_s, expiratory_s = _timing(rows, gaps)
+    pause_s = _pause(rows, inspiratory_s)
     synchronised = _synchronised(rows, gaps)
     tracheostomy, tube_mm, tube_cm = _airway(rows, gaps)
     limb_mm = np.where(
@@ -180,8 +186,8 @@ def setup_of(rows: Batch) -> Setup:
         tidal_ml=tidal_ml,
         inspiratory_s=inspiratory_s,
         expiratory_s=expiratory_s,
-        pause_s=_pause(rows, inspiratory_s),
-        peak_ratio=_peak_ratio(rows, inspiratory_s),
+        pause_s=pause_s,
+        peak_ratio=_peak_ratio(rows, inspiratory_s - pause_s),
         bias_ml_per_s=_bias(rows, single, gaps),
         gas_ml_per_s=_gas(rows, synchronised, gaps),
         limb_mm=limb_mm,
@@ -265,11 +271,11 @@ def _pause(rows: Batch, inspiratory_s: np.ndarray) -> np.ndarray:
     return np.where(pause_s < inspiratory_s, pause_s, 0.0)
 
 
-def _peak_ratio(rows: Batch, inspiratory_s: np.ndarray) -> np.ndarray:
+def _peak_ratio(rows: Batch, moving_s: np.ndarray) -> np.ndarray:
     """Peak over mean flow of a falling flow; constant flow where none is logged."""
     peak_ml_per_s = rows["peak_inspiratory_flow_lpm"] * (ML_PER_L / S_PER_MIN)
     with np.errstate(divide="ignore", invalid="ignore"):
-        ratio = peak_ml_per_s * inspiratory_s / rows["tidal_volume_ml"]
+        ratio = peak_ml_per_s * moving_s / rows["tidal_volume_ml"]
     return np.clip(np.nan_to_num(ratio, nan=1.0), 1.0, 2.0)
 
 

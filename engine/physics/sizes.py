@@ -55,7 +55,7 @@ def column(values: np.ndarray) -> np.ndarray:
 
 def inspiratory_ml_per_s(setup: Setup) -> np.ndarray:
     """Mean inspiratory flow while gas moves: the pause is left out."""
-    return setup.tidal_ml / (setup.inspiratory_s - setup.pause_s)
+    return setup.tidal_ml / setup.moving_s
 
 
 def expiratory_ml_per_s(setup: Setup) -> np.ndarray:

@@ -90,6 +90,7 @@ def on_patient_side(setup: Setup, sized: Sized, constants: Constants) -> AtWye:
     at_once, waits = wye.patient_side(
         tidal_ml=setup.tidal_ml,
         inspiratory_s=setup.inspiratory_s,
+        pause_s=setup.pause_s,
         expiratory_s=setup.expiratory_s,
         to_wye_ml=to_wye_ml,
         dead_ml=np.maximum(setup.dead_ml - to_wye_ml - _hme_ml(setup), 0.0),
@@ -111,11 +112,17 @@ def _hme_ml(setup: Setup) -> np.ndarray:
 
 
 def cycle(setup: Setup) -> wye.Cycle:
-    """The breath as the Y sees it; a single limb leaks during inspiration too."""
+    """The breath as the Y sees it.
+
+    Nothing moves in a pause, except that a single limb goes on leaking: its leak flows
+    in inspiration too, and its pause counts as expiration.
+    """
+    pause_s = np.where(setup.is_single_limb, 0.0, setup.pause_s)
     return wye.cycle_of(
         tidal_ml=setup.tidal_ml,
-        inspiratory_s=setup.inspiratory_s,
-        expiratory_s=setup.expiratory_s,
+        inspiratory_s=setup.moving_s,
+        pause_s=pause_s if np.any(pause_s) else 0.0,
+        expiratory_s=setup.expiratory_s + setup.pause_s - pause_s,
         bias_ml_per_s=setup.bias_ml_per_s,
         gas_ml_per_s=setup.gas_ml_per_s,
         dead_ml=setup.dead_ml,
@@ -133,9 +140,9 @@ def emission(setup: Setup) -> wye.Emission:
     """When each generator puts out: always, in inspiration, or one puff."""
     if setup.emission is not None:
         return wye.emission_of(cycle(setup), setup.emission)
-    puff_s = np.minimum(float(device.PUFF_S), setup.inspiratory_s)
+    puff_s = np.minimum(float(device.PUFF_S), setup.moving_s)
     always_s = setup.inspiratory_s + setup.expiratory_s
-    stop_s = np.where(setup.is_synchronised, setup.inspiratory_s, always_s)
+    stop_s = np.where(setup.is_synchronised, setup.moving_s, always_s)
     return wye.Emission(np.zeros(len(setup)), np.where(setup.is_puff, puff_s, stop_s))
 
 

@@ -51,6 +51,7 @@ class Cycle:
     window_ml      arrivals in this first part of the inspired gas reach the patient
     peak_ratio     peak over mean of a falling inspiratory flow: 1 constant, 2 to zero
     patient_share  of the inspired gas, where a leak or bias flow takes the rest
+    pause_s        between the two, when nothing moves
     """
 
     inspired_ml: Values
@@ -60,6 +61,7 @@ class Cycle:
     expiratory_s: Values
     peak_ratio: Values = 1.0
     patient_share: Values = 1.0
+    pause_s: Values = 0.0
 
     @property
     def cycle_ml(self) -> Values:
@@ -69,7 +71,12 @@ class Cycle:
     @property
     def cycle_s(self) -> Values:
         """Time of a whole breath."""
-        return self.inspiratory_s + self.expiratory_s
+        return self.inspiratory_s + self.pause_s + self.expiratory_s
+
+    @property
+    def turn_s(self) -> Values:
+        """When the gas begins to be swept: inspiration and pause are over."""
+        return self.inspiratory_s + self.pause_s
 
 
 def cycle_of(
@@ -83,6 +90,7 @@ def cycle_of(
     gas_is_added: bool = False,
     bias_in_inspiration: Values = False,
     peak_ratio: Values = 1.0,
+    pause_s: Values = 0.0,
 ) -> Cycle:
     """The breath at the Y from what a ventilator is set to.
 
@@ -105,6 +113,7 @@ def cycle_of(
         expiratory_s=expiratory_s,
         peak_ratio=peak_ratio,
         patient_share=tidal_ml / (tidal_ml + through_ml),
+        pause_s=pause_s,
     )
 
 
@@ -128,7 +137,7 @@ def emission_of(cycle: Cycle, kind: str) -> Emission:
     ends = {
         "continuous": (0.0, cycle.cycle_s),
         "inspiration": (0.0, cycle.inspiratory_s),
-        "expiration": (cycle.inspiratory_s, cycle.cycle_s),
+        "expiration": (cycle.turn_s, cycle.cycle_s),
         "puff": (0.0, np.minimum(float(device.PUFF_S), cycle.inspiratory_s)),
     }
     if kind not in ends:
@@ -186,7 +195,8 @@ def dispersed(parts: Parts, cycle: Cycle, emission: Emission) -> Arrivals:
 
     Parts    each stretch of tubing and each stirred chamber on the way to the Y.
     Shapes   arrays of n -> n.
-    Holds    share within 0.01 of parcels of gas followed one by one.
+    Holds    what gets through the tube within 0.01 of parcels of gas followed one by
+             one; a few in a thousand a little more.
     Checked  engine/evidence/published/wye_values.csv
     """
     spread = np.asarray(_spread_ml(parts) / cycle.cycle_ml)
@@ -381,11 +391,11 @@ def _inspired_by_ml(cycle: Cycle, time_s: Values) -> np.ndarray:
 def _expiratory_time_s(cycle: Cycle, position_ml: Values) -> Values:
     """When a position of the gas swept past the Y passes it."""
     slope = cycle.expiratory_s / cycle.swept_ml
-    return cycle.inspiratory_s + (position_ml - cycle.inspired_ml) * slope
+    return cycle.turn_s + (position_ml - cycle.inspired_ml) * slope
 
 
 def _swept_by_ml(cycle: Cycle, time_s: Values) -> np.ndarray:
-    share = np.clip((time_s - cycle.inspiratory_s) / cycle.expiratory_s, 0.0, 1.0)
+    share = np.clip((time_s - cycle.turn_s) / cycle.expiratory_s, 0.0, 1.0)
     return cycle.inspired_ml + cycle.swept_ml * share
 
 
@@ -432,7 +442,13 @@ def _inhaled(volume_ml: Values, cycle: Cycle, emission: Emission) -> list[_Piece
     put_in, put_out = _outputs(cycle, emission)
     window = _Stretch(0.0, cycle.window_ml, _inspiratory_time_s)
     met = _meeting(volume_ml, cycle, emission)
-    return [met(put_in, window, 0), met(put_in, window, 1), met(put_out, window, 1)]
+    paused = _paused(volume_ml, cycle, emission, (window,))
+    return [
+        met(put_in, window, 0),
+        met(put_in, window, 1),
+        met(put_out, window, 1),
+        *paused,
+    ]
 
 
 def _swept(volume_ml: Values, cycle: Cycle, emission: Emission) -> list[_Piece]:
@@ -440,12 +456,45 @@ def _swept(volume_ml: Values, cycle: Cycle, emission: Emission) -> list[_Piece]:
     late = _Stretch(cycle.window_ml, cycle.inspired_ml, _inspiratory_time_s)
     after = _Stretch(cycle.inspired_ml, cycle.cycle_ml, _expiratory_time_s)
     met = _meeting(volume_ml, cycle, emission)
-    return [
+    pieces = [
         met(output, window, lap)
         for output in (put_in, put_out)
         for window in (late, after)
         for lap in (0, 1)
     ]
+    return pieces + _paused(volume_ml, cycle, emission, (late, after))
+
+
+def _in_pause_s(cycle: Cycle, emission: Emission) -> Values:
+    """How much of the output falls into the pause."""
+    stop_s = np.minimum(emission.stop_s, cycle.turn_s)
+    return np.maximum(stop_s - np.maximum(emission.start_s, cycle.inspiratory_s), 0.0)
+
+
+def _paused(
+    volume_ml: Values, cycle: Cycle, emission: Emission, windows: tuple[_Stretch, ...]
+) -> list[_Piece]:
+    """What is put out in a pause: all of it at one place, the end of the inspired gas.
+
+    As in ``_meeting``: the share that arrives in each window, and its age for the
+    output of the beginning and of the end of the pause.
+    """
+    if not np.any(cycle.pause_s):
+        return []
+    duration_s = np.maximum(emission.stop_s - emission.start_s, _TINY)
+    share = _in_pause_s(cycle, emission) / duration_s
+    gone_ml = volume_ml + cycle.inspired_ml
+    laps = np.floor(gone_ml / cycle.cycle_ml)
+    place_ml = gone_ml - laps * cycle.cycle_ml
+    found = []
+    for window in windows:
+        is_here = (place_ml >= window.start_ml) & (place_ml < window.stop_ml)
+        age_s = laps * cycle.cycle_s + window.clock(cycle, place_ml)
+        age_s = np.where(is_here, age_s, 0.0)
+        found.append(
+            (share * is_here, age_s - cycle.inspiratory_s, age_s - cycle.turn_s)
+        )
+    return found
 
 
 def _meeting(
@@ -561,19 +610,26 @@ def _ahead(
 ) -> tuple[np.ndarray, np.ndarray]:
     """Mean and variance of how far output runs ahead of the mean flow.
 
-    It starts at nothing, is ``turn_s`` where the breath turns, and comes back.
+    It starts at nothing, is ``turn_s`` where the inspiration ends, grows through a
+    pause, and comes back.
     """
+
+    late_s = turn_s + cycle.pause_s
 
     def ahead(time_s: Values) -> np.ndarray:
         rising = turn_s * time_s / cycle.inspiratory_s
-        falling = turn_s * (cycle.cycle_s - time_s) / cycle.expiratory_s
-        return np.where(time_s < cycle.inspiratory_s, rising, falling)
+        waiting = turn_s + time_s - cycle.inspiratory_s
+        falling = late_s * (cycle.cycle_s - time_s) / cycle.expiratory_s
+        moving = np.where(time_s < cycle.inspiratory_s, rising, falling)
+        is_still = (time_s >= cycle.inspiratory_s) & (time_s < cycle.turn_s)
+        return np.where(is_still, waiting, moving)
 
-    turn = cycle.inspiratory_s
+    first_s, last_s = emission.start_s, emission.stop_s
     ends = (
-        emission.start_s,
-        np.clip(turn, emission.start_s, emission.stop_s),
-        emission.stop_s,
+        first_s,
+        np.clip(cycle.inspiratory_s, first_s, last_s),
+        np.clip(cycle.turn_s, first_s, last_s),
+        last_s,
     )
     duration_s = np.maximum(emission.stop_s - emission.start_s, _TINY)
     pieces = [
@@ -604,17 +660,24 @@ def _stretches(
     Returns  share, middle in mL and half length in mL of each stretch.
     """
     pieces = 1 if _is_steady(cycle) else int(wye.FALLING_FLOW_PIECES_COUNT)
-    turn_s = cycle.inspiratory_s
     duration_s = np.maximum(emission.stop_s - emission.start_s, _TINY)
-    first_s = np.minimum(emission.start_s, turn_s)
-    step_s = (np.minimum(emission.stop_s, turn_s) - first_s) / pieces
+    first_s = np.minimum(emission.start_s, cycle.inspiratory_s)
+    step_s = (np.minimum(emission.stop_s, cycle.inspiratory_s) - first_s) / pieces
     ends = [_inspired_by_ml(cycle, first_s + i * step_s) for i in range(pieces + 1)]
-    last_s = np.maximum(emission.start_s, turn_s), np.maximum(emission.stop_s, turn_s)
+    last_s = (
+        np.maximum(emission.start_s, cycle.turn_s),
+        np.maximum(emission.stop_s, cycle.turn_s),
+    )
     after = [_swept_by_ml(cycle, time_s) for time_s in last_s]
     shares = [step_s / duration_s] * pieces + [(last_s[1] - last_s[0]) / duration_s]
-    lows = np.stack([np.asarray(v) for v in (*ends[:-1], after[0])])
-    highs = np.stack([np.asarray(v) for v in (*ends[1:], after[1])])
-    return np.stack(shares), (lows + highs) / 2, (highs - lows) / 2
+    lows = [np.asarray(v) for v in (*ends[:-1], after[0])]
+    highs = [np.asarray(v) for v in (*ends[1:], after[1])]
+    if np.any(cycle.pause_s):
+        shares.append(_in_pause_s(cycle, emission) / duration_s)
+        lows.append(np.asarray(cycle.inspired_ml))
+        highs.append(np.asarray(cycle.inspired_ml))
+    low, high = np.stack(lows), np.stack(highs)
+    return np.stack(shares), (low + high) / 2, (high - low) / 2
 
 
 def _tanks(w: np.ndarray, tanks: float) -> np.ndarray:
@@ -642,6 +705,7 @@ def patient_side(
     emission_start_s: Values,
     emission_stop_s: Values,
     gas_ml_per_s: Values = 0.0,
+    pause_s: Values = 0.0,
     time_constant_s: Values,
 ) -> tuple[np.ndarray, Arrivals]:
     """What is inhaled of a generator between Y and airway.
@@ -662,7 +726,7 @@ def patient_side(
         expiratory_s,
     )
     breathed_in_s = np.maximum(
-        np.minimum(emission_stop_s, inspiratory_s) - emission_start_s, 0.0
+        np.minimum(emission_stop_s, inspiratory_s - pause_s) - emission_start_s, 0.0
     )
     kept_s = np.maximum(
         np.minimum(emission_stop_s, cycle_s) - np.maximum(emission_start_s, stays_s),

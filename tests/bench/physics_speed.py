@@ -67,6 +67,7 @@ def department(n: int, seed: int = 1) -> dict[str, np.ndarray]:
     rows["peak_inspiratory_flow_lpm"] = np.where(
         rng.random(n) < 0.5, rng.uniform(30, 70, n), np.nan
     )
+    rows["inspiratory_pause_s"] = np.where(rng.random(n) < 0.25, 0.2, np.nan)
     return rows
 
 
