@@ -37,6 +37,7 @@ def main() -> None:
     ]
     chosen = st.navigation(pages)
     st.markdown(theme.css(), unsafe_allow_html=True)
+    data.remember()
     with st.sidebar:
         _choices()
     st.title(chosen.title)
@@ -55,7 +56,7 @@ def _choices() -> None:
         path = st.text_input("Path of the log file", key="own_path")
         if st.button("Open", key="open_own") and path:
             try:
-                st.query_params["log"] = data.add_log(path)
+                data.choose("log", data.add_log(path))
             except EngineError as problem:
                 st.warning(parts.plain(problem))
             else:
@@ -74,11 +75,7 @@ def _box(label: str, key: str, choices: dict[str, str], now: str) -> None:
     names = list(choices)
 
     def remember() -> None:
-        chosen = st.session_state[f"choice_{key}"]
-        for name in list(st.query_params):
-            if name not in {"log", "policy"}:
-                del st.query_params[name]
-        st.query_params[key] = chosen
+        data.choose(key, st.session_state[f"choice_{key}"])
 
     st.selectbox(
         label,

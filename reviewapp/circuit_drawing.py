@@ -143,8 +143,8 @@ _SHORT = {
     "mmad_um": "droplets",
 }
 _FOOT = (
-    "Ribbons are to scale of the nominal dose. Model estimate from bench-based methods; "
-    "needs clinical confirmation."
+    "Ribbons are to scale of the nominal dose. Model estimate from bench-based "
+    "methods; needs clinical confirmation."
 )
 
 

@@ -69,10 +69,34 @@ def log_choices() -> dict[str, str]:
 
 
 def log_key() -> str:
-    """The log asked for in the address, else the one named at the start."""
-    choices = log_choices()
-    asked = st.query_params.get("log")
-    return asked if asked in choices else next(iter(choices))
+    """The log asked for in the address or chosen before; else the first there is."""
+    return _chosen("log", list(log_choices()))
+
+
+def kept() -> dict[str, str]:
+    """Log and policy as an address carries them; what is usual is left out."""
+    usual = {"log": next(iter(log_choices())), "policy": next(iter(POLICIES))}
+    now = {"log": log_key(), "policy": policy_key()}
+    return {key: value for key, value in now.items() if value != usual[key]}
+
+
+def remember() -> None:
+    """Puts log and policy into the address, so that a link reopens the same view."""
+    for key, value in kept().items():
+        st.query_params[key] = value
+
+
+def choose(key: str, value: str) -> None:
+    """Another log or policy; what the address asked of the old one is dropped."""
+    st.query_params.clear()
+    st.session_state[f"kept_{key}"] = value
+
+
+def _chosen(key: str, choices: list[str]) -> str:
+    asked = st.query_params.get(key, st.session_state.get(f"kept_{key}"))
+    chosen = asked if asked in choices else choices[0]
+    st.session_state[f"kept_{key}"] = chosen
+    return chosen
 
 
 def add_log(text: str) -> str:
@@ -122,9 +146,8 @@ def log_label() -> str:
 
 
 def policy_key() -> str:
-    """The policy asked for in the address; common practice otherwise."""
-    asked = st.query_params.get("policy")
-    return asked if asked in POLICIES else "common_practice"
+    """The policy asked for in the address or chosen before; else common practice."""
+    return _chosen("policy", list(POLICIES))
 
 
 def policy() -> Policy:

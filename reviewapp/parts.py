@@ -6,6 +6,7 @@ import re
 from collections.abc import Mapping
 from html import escape
 from typing import Any
+from urllib.parse import urlencode
 
 import pandas as pd
 import streamlit as st
@@ -39,6 +40,13 @@ def opening(sentence: str) -> None:
 def caution() -> None:
     """What every screen says of itself."""
     st.markdown(f'<p class="caution">{escape(CAUTION)}</p>', unsafe_allow_html=True)
+
+
+def address(screen: str, **wanted: str | None) -> str:
+    """A link to a screen on what the figure stands for, same log and policy."""
+    path = "/" if screen == "month" else f"/{screen}"
+    given = {key: value for key, value in {**data.kept(), **wanted}.items() if value}
+    return f"{path}?{urlencode(given)}" if given else path
 
 
 def empty(message: str, what_to_do: str) -> None:

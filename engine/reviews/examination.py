@@ -52,7 +52,7 @@ _DENIALS = r"(?:\bno|\bnot|\bwithout|\bfree of|\bclean of|\bnone|\bnil)\b[\w\s,]
 
 def found_in(note: str | None, cause: str) -> bool | None:
     """True if the note names the cause, False if it denies it, None if silent."""
-    if not note:
+    if not isinstance(note, str):
         return None
     text = note.lower()
     answer: bool | None = None

@@ -49,7 +49,7 @@ def _small_multiples(review: Filters) -> None:
     colours = theme.colours()
     top = _common_top(review, shown)
     cells = "".join(
-        f'<a href="?filter={escape(name, quote=True)}" target="_self"'
+        f'<a href="{escape(parts.address("filters", filter=name))}" target="_self"'
         ' style="text-decoration:none;color:inherit">'
         f"{small_filter_svg(review, name, colours, top)}</a>"
         for name in shown

@@ -15,7 +15,8 @@ from engine.reviews.indicators import INDICATORS
 from engine.reviews.month import Month
 from engine.reviews.month_journal import differences
 from reviewapp import data, parts, theme
-from reviewapp.month_html import address, lines_html, style
+from reviewapp.month_html import lines_html, style
+from reviewapp.parts import address
 from reviewapp.report import page
 from reviewapp.reports.month import (
     filters_table,

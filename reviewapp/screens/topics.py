@@ -11,7 +11,7 @@ from engine.reviews.figures import month_words
 from engine.reviews.topic_catalogue import TOPICS
 from engine.reviews.topics import CHOICES, Sheet, Topics
 from reviewapp import data, parts, theme
-from reviewapp.month_html import address
+from reviewapp.parts import address
 from reviewapp.report import page
 from reviewapp.reports.topics import (
     sessions_html,
