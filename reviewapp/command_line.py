@@ -83,7 +83,7 @@ def _parser() -> argparse.ArgumentParser:
         "kind", choices=("month", "topics", "incident", "filters", "scenario")
     )
     one.add_argument("log", type=Path, metavar="LOG")
-    one.add_argument("--out", type=Path, required=True, metavar="FILE.html|.pdf|.xlsx")
+    one.add_argument("--out", type=Path, required=True, metavar="FILE.html")
     one.add_argument("--month", metavar="YYYY-MM", help="default: the last whole month")
     one.add_argument("--incident", metavar="ID")
     one.add_argument("--journal", type=Path, metavar="FILE")
@@ -182,7 +182,7 @@ def _replay(chosen: argparse.Namespace) -> None:
 
 
 def _report(chosen: argparse.Namespace) -> None:
-    from reviewapp.reports import write_report
+    from reviewapp.reports.write import write_report
 
     write_report(
         chosen.kind,

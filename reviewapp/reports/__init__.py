@@ -1,3 +1,1 @@
-"""Every report, by its kind, as a file: printable HTML, PDF or a workbook."""
-
-from __future__ import annotations
+"""Every report, by its kind: sections for the screens, whole files for the rest."""

@@ -83,8 +83,8 @@ def _agreement() -> None:
     st.markdown(
         "Bench results that were **never fitted**, with known conditions: "
         f"{parts.plain(sentence)}. The band is meant to hold 80 %; it holds more "
-        "here, so it is on the wide side. Two published studies exclude each other on the best "
-        "site of a mesh with bias flow; both stand below."
+        "here, so it is on the wide side. Two published studies exclude each other on "
+        "the best site of a mesh with bias flow; both stand below."
     )
     drawn = table[table["estimate"].notna()]
     st.markdown(bench_svg(drawn, theme.colours()), unsafe_allow_html=True)

@@ -21,7 +21,8 @@ def show() -> None:
     total = accounts[["rows_in", "rows_used", "rows_refused"]].sum()
     parts.opening(
         f"{data.log_label()}: {total['rows_in']:,} rows in = "
-        f"{total['rows_used']:,} used + {total['rows_refused']:,} refused. Nothing is dropped in silence."
+        f"{total['rows_used']:,} used + {total['rows_refused']:,} refused. "
+        "Nothing is dropped in silence."
     )
     parts.caution()
     info = data.frame("FROM log_info LIMIT 1")
