@@ -17,7 +17,6 @@ APP = Path(__file__).with_name("app.py")
 
 _OPTIONS = {
     "server.address": "127.0.0.1",
-    "server.allowedHosts": "localhost,127.0.0.1",
     "server.fileWatcherType": "none",
     "server.maxUploadSize": "50",
     "browser.gatherUsageStats": "false",
@@ -25,6 +24,8 @@ _OPTIONS = {
     "client.showErrorDetails": "none",
     "runner.magicEnabled": "false",
 }
+
+_HOSTS = ("localhost", "127.0.0.1")
 
 
 def streamlit_command(port: int | None = None) -> list[str]:
@@ -35,6 +36,8 @@ def streamlit_command(port: int | None = None) -> list[str]:
     if port is not None:
         options |= {"server.port": str(port), "server.headless": "true"}
     listed = [f"--{name}={value}" for name, value in options.items()]
+    # An option that is a list is given once for each of its values.
+    listed += [f"--server.allowedHosts={host}" for host in _HOSTS]
     return [sys.executable, "-m", "streamlit", "run", str(APP), *listed]
 
 
