@@ -239,22 +239,54 @@ PERSON_MINUTES = _BY_PATIENT.format(
 )
 ROOM_UG = _BY_PATIENT.format(among="true", amount="1000 * nominal_dose_mg * room_frac")
 
-# Resistance against how many treatments had gone through the filter by then.
-RISES = f"""
+# The Theil-Sen slope of each filter against how many treatments had gone through it:
+# the median over pairs of readings. A filter belongs to the month of its last reading;
+# of a filter read more often than that, the last readings count.
+MOST_READINGS = 120
+_RISES = f"""
+CREATE TABLE IF NOT EXISTS filter_rise AS
 WITH through AS (
   SELECT filter_in_use_id AS filter_id, started_at,
          row_number() OVER (PARTITION BY filter_in_use_id
                             ORDER BY started_at, treatment_id) AS n
   FROM asked WHERE filter_in_use_id IS NOT NULL
+),
+read AS (
+  SELECT r.filter_id, r.read_at, r.reading_id,
+         r.resistance_cmh2o_per_lps AS resistance, coalesce(t.n, 0)::DOUBLE AS n
+  FROM (FROM reading WHERE resistance_cmh2o_per_lps IS NOT NULL
+        AND filter_id IS NOT NULL) r
+  ASOF LEFT JOIN through t ON t.filter_id = r.filter_id AND r.read_at >= t.started_at
+  QUALIFY row_number() OVER (PARTITION BY r.filter_id
+            ORDER BY r.read_at DESC, r.reading_id) <= {MOST_READINGS}
+),
+counted AS (
+  SELECT filter_id, count(*) AS readings, max(read_at) AS last_at
+  FROM read GROUP BY 1
+),
+sloped AS (
+  SELECT a.filter_id, median((b.resistance - a.resistance) / (b.n - a.n)) AS slope
+  FROM read a JOIN read b ON a.filter_id = b.filter_id AND b.n > a.n
+  JOIN counted c ON c.filter_id = a.filter_id AND c.readings >= $enough
+  GROUP BY 1
 )
-SELECT r.filter_id, r.read_at, r.resistance_cmh2o_per_lps AS resistance,
-       coalesce(t.n, 0)::DOUBLE AS treatments,
-       {_MONTH_OF.format(at="r.read_at")} AS local_month
-FROM (FROM reading WHERE resistance_cmh2o_per_lps IS NOT NULL
-      AND filter_id IS NOT NULL) r
-ASOF LEFT JOIN through t ON t.filter_id = r.filter_id AND r.read_at >= t.started_at
-ORDER BY r.filter_id, r.read_at
+SELECT c.filter_id, c.readings, s.slope,
+       {_MONTH_OF.format(at="c.last_at")} AS local_month
+FROM counted c LEFT JOIN sloped s USING (filter_id)
 """
+
+RISES = """
+SELECT local_month, slope FROM filter_rise ORDER BY local_month, filter_id
+"""
+
+
+def make_rises(replay: Replay) -> None:
+    """Makes the table ``filter_rise`` beside the replay, once."""
+    enough = replay.policy.filters.readings_for_a_trend_count
+    asked = {"enough": enough, "zone": replay.log.site_zone}
+    with _MAKING:
+        replay.log.cursor().execute(_RISES, asked)
+
 
 FLAGS = """
 SELECT rule_id, count(*) AS flags, count(DISTINCT treatment_id) AS treatments

@@ -12,7 +12,6 @@ from engine.reviews.indicators import BY_ID, INDICATORS, OF_TREATMENTS
 from engine.reviews.month_journal import baselines, judged_series, stronger_series
 from engine.reviews.month_lines import Line, line, mean_series, share_series
 from engine.stats.rates import poisson_exact
-from engine.stats.trends import theil_sen
 
 
 def all_lines(
@@ -79,24 +78,15 @@ _BAND = ("The interval is that of the median, not the spread of treatments.",)
 
 def _rises(replay: Replay, months: list[str]) -> pd.DataFrame:
     """Median slope of the filters whose last reading fell in each month."""
-    readings = replay.frame(rows.RISES, {"zone": replay.log.site_zone})
-    enough = replay.policy.filters.readings_for_a_trend_count
-    found = []
-    for _, own in readings.groupby("filter_id", sort=False):
-        if len(own) < enough:
-            found.append((own["local_month"].iloc[-1], np.nan))
-            continue
-        slope = theil_sen(own["treatments"].to_numpy(), own["resistance"].to_numpy())
-        usable = slope.slope if not slope.refusal else np.nan
-        found.append((own["local_month"].iloc[-1], usable))
-    table = pd.DataFrame(found, columns=["local_month", "slope"])
-    return _medians(table, "slope", months)
+    rows.make_rises(replay)
+    return _medians(replay.frame(rows.RISES), "slope", months)
 
 
 def _medians(table: pd.DataFrame, column: str, months: list[str]) -> pd.DataFrame:
     made = []
+    by_month = dict(tuple(table.groupby("local_month")[column]))
     for month in months:
-        own = table.loc[table["local_month"] == month, column]
+        own = by_month.get(month, table[column].head(0))
         values = np.sort(own.dropna().to_numpy(float))
         value, low, high = _median_with_ends(values)
         made.append((month, value, low, high, len(values), len(own) - len(values)))

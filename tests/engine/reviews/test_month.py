@@ -6,7 +6,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-from scipy.stats import binomtest
+from scipy.stats import binomtest, theilslopes
 from statsmodels.stats.proportion import (
     confint_proportions_2indep,
     proportion_confint,
@@ -306,3 +306,32 @@ def test_rare_events_are_told_by_the_treatments_between_them(replayed):
     # Two a day from the 1st at 06:00: 18 before the 10th, 54 in all.
     assert told.startswith("2 flow-sensor events so far; the last one 36 treatments")
     assert "need 11 events" in told
+
+
+def test_the_rise_of_a_filter_is_its_theil_sen_slope_a_treatment(replayed):
+    rows = treatments("2026-03", 54, filter_id="F1")
+    values = [2.2, 2.3, 2.5, 2.4, 2.7, 2.9, 2.8, 3.1]
+    reads = [
+        {
+            "reading_id": f"R{i}",
+            "filter_id": "F1",
+            "ventilator_token": "V1",
+            "read_at": f"2026-03-{2 + 3 * i:02d} 05:00",
+            "flow_lpm": 60.0,
+            "pressure_drop_cmh2o": value,
+            "reading_source": "manometer",
+        }
+        for i, value in enumerate(values)
+    ]
+    use = {
+        "filter_id": "F1",
+        "ventilator_token": "V1",
+        "filter_kind": "electrostatic",
+        "installed_at": "2026-03-01 05:00",
+        "new_resistance_cmh2o_per_lps": 2.2,
+    }
+    done = replayed(treatment=rows, filter_use=[use], filter_reading=reads)
+    line = review_month(done, "2026-03").line("I07")
+    # Two treatments a day stood before each reading; the slope by scipy.
+    given = [2 * (1 + 3 * i) for i in range(len(values))]
+    assert line.value == pytest.approx(theilslopes(values, given).slope)
