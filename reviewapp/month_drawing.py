@@ -112,7 +112,7 @@ def spark_svg(each: Line, colours: Colours) -> str:
     for i in map(int, np.flatnonzero(np.isfinite(values))):
         x, y = to_x(i), to_y(values[i])
         if outside[i]:
-            parts.append(rectangle(x - 3, y - 3, 6, 6, colours["fired"]))
+            parts.append(rectangle(x - 3, y - 3, 6, 6, _beyond(each, i, colours)))
         elif i == len(values) - 1:
             parts.append(circle(x, y, 3.2, colours["aerosol"]))
     return drawing(width, height, _spark_words(each), parts)
@@ -172,7 +172,9 @@ def _points(each: Line, to_x: Scale, to_y: Scale, colours: Colours) -> list[str]
             )
         if row["outside"]:
             parts.append(
-                rectangle(x - 4.5, y - 4.5, 9, 9, colours["fired"], words=words)
+                rectangle(
+                    x - 4.5, y - 4.5, 9, 9, _beyond(each, i, colours), words=words
+                )
             )
         else:
             parts.append(circle(x, y, 4, colours["panel"], colours["aerosol"], words))
@@ -323,6 +325,14 @@ def _written(each: Line, value: float) -> str:
         figure = 100 * value
         return f"{figure:.0f} %" if figure >= 10 or figure == 0 else f"{figure:.1f} %"
     return significant(value)
+
+
+def _beyond(each: Line, i: int, colours: Colours) -> str:
+    """The colour of a month outside its limits: to be looked at where unwanted."""
+    row = each.months.iloc[i]
+    side = 1 if row["value"] > row["centre"] else -1
+    wanted = side == each.indicator.wanted_side
+    return colours["aerosol" if wanted else "fired"]
 
 
 def _colour(each: Line, colours: Colours) -> str:

@@ -22,7 +22,7 @@ from reviewapp.units_drawing import funnel_svg, units_svg
 UnitsOf = Mapping[str, Units]
 Marks = Sequence[tuple[str, str]]
 COLUMNS = (
-    "minmax(128px,1.5fr) 66px minmax(88px,1fr) 70px minmax(68px,.75fr)"
+    "minmax(128px,1.5fr) 78px minmax(88px,1fr) 70px minmax(68px,.75fr)"
     " minmax(112px,1.4fr)"
 )
 

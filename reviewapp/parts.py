@@ -63,9 +63,31 @@ def plain(words: object) -> str:
     return re.sub(r"([\\`*_{}\[\]()#+!|<>$~:])", r"\\\1", str(words))
 
 
+# Columns a review adds, which the dictionary of the log does not hold.
+_ADDED = {
+    "hours_h": "Hours in use",
+    "resistance_cmh2o_per_lps": "At the reference flow, cmH2O/(L/s)",
+    "doubt": "Why not used",
+    "captured_ml": "Caught, mL",
+    "treatments": "Treatments",
+    "patients": "Patients",
+    "text": "What",
+    "strength": "Strength",
+    "owner_role": "Owner (role)",
+    "measure": "Measured by",
+    "due": "Due",
+    "actor": "By",
+    "role": "Role",
+    "at": "At (UTC)",
+    "about": "About",
+}
+
+
 def labelled(table: pd.DataFrame) -> pd.DataFrame:
     """The same table with its columns called what the dictionary calls them."""
-    return table.rename(columns={name: label_of(str(name)) for name in table.columns})
+    return table.rename(
+        columns={name: _ADDED.get(name) or label_of(name) for name in table.columns}
+    )
 
 
 def signature(key: str) -> tuple[str, str]:

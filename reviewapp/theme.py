@@ -27,12 +27,14 @@ def css() -> str:
     """Style shared by every screen: a readable measure, quiet tables, print."""
     shown = colours()
     return f"""<style>
-.block-container {{ max-width: 1180px; padding-top: 3.2rem; }}
+.stMain .block-container {{ max-width: 1240px; padding: 2.2rem 2.4rem 4rem; }}
+[data-testid="stSidebar"] {{ min-width: 240px; max-width: 240px; }}
+.stMain h1 {{ font-size: 1.9rem; padding: 0.4rem 0 0.2rem; }}
 h1, h2, h3 {{ letter-spacing: -0.01em; }}
-.opening {{ font-size: 1.22rem; line-height: 1.5; max-width: 60rem;
-  margin: 0.2rem 0 0.5rem; }}
-.caution {{ font-size: 0.84rem; color: {shown["faint"]}; max-width: 60rem;
-  border-left: 3px solid {shown["fired"]}; padding-left: 0.7rem; margin: 0 0 1rem; }}
+.stMain p.opening {{ font-size: 1.2rem; line-height: 1.5; max-width: 62rem;
+  margin: 0.2rem 0 0.4rem; }}
+.stMain p.caution {{ font-size: 0.84rem; color: {shown["faint"]}; max-width: 62rem;
+  border-left: 3px solid {shown["fired"]}; padding-left: 0.7rem; margin: 0 0 0.6rem; }}
 .nothing {{ border: 1px dashed {shown["unknown"]}; border-radius: 6px;
   padding: 0.9rem 1.1rem; margin: 0.6rem 0; }}
 .nothing b {{ display: block; margin-bottom: 0.2rem; }}

@@ -252,7 +252,11 @@ def _with_shares(
 
 
 def _most_urgent_first(lives: pd.DataFrame) -> pd.DataFrame:
-    """In use before removed, then by state, then by time to the limit."""
+    """By state, in use before removed, then by time to the limit.
+
+    A filter that ran away and was taken out is looked back on before one that is in
+    use and has too few readings to say anything of.
+    """
     order = {state: place for place, state in enumerate(STATE_WORDS)}
     return (
         lives.assign(
@@ -261,8 +265,8 @@ def _most_urgent_first(lives: pd.DataFrame) -> pd.DataFrame:
             _high=-lives["last_cmh2o_per_lps"].astype(float).fillna(-math.inf),
         )
         .sort_values(
-            ["in_use", "_state", "_soon", "_high", "filter_id"],
-            ascending=[False, True, True, True, True],
+            ["_state", "in_use", "_soon", "_high", "filter_id"],
+            ascending=[True, False, True, True, True],
         )
         .drop(columns=["_state", "_soon", "_high"])
         .reset_index(drop=True)

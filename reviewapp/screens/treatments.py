@@ -50,11 +50,7 @@ def show() -> None:
             "Widen the choices above, or open another log on the left.",
         )
         return
-    left, right = st.columns([1.05, 2.6], gap="medium")
-    with left:
-        chosen = _list(listed, total)
-    with right:
-        _one(chosen)
+    _one(_list(listed, total))
 
 
 # --- the worklist --------------------------------------------------------------------
@@ -106,9 +102,10 @@ def _worklist(asked: dict[str, str]) -> tuple[pd.DataFrame, int]:
     rows = data.frame(
         "SELECT a.treatment_id, a.started_at, a.unit_token, a.shift::VARCHAR AS shift,"
         " a.generator::VARCHAR AS generator, a.site::VARCHAR AS site,"
-        " coalesce(f.flags, 0) AS flags "
+        " coalesce(f.flags, 0) AS flags, coalesce(f.rules, '') AS rules "
         "FROM asked a JOIN answer w USING (treatment_id) LEFT JOIN "
-        "(SELECT treatment_id, count(*) AS flags FROM finding GROUP BY 1) f"
+        "(SELECT treatment_id, count(*) AS flags,"
+        " string_agg(rule_id, ' ' ORDER BY rule_id) AS rules FROM finding GROUP BY 1) f"
         f" USING (treatment_id) WHERE {where} "
         f"ORDER BY flags DESC, a.started_at DESC, a.treatment_id LIMIT {SHOWN}",
         params,
@@ -171,34 +168,39 @@ def _sentence(asked: dict[str, str], total: int) -> str:
 
 def _list(listed: pd.DataFrame, total: int) -> str:
     zone = data.site_zone()
+    nothing = "not logged"
     table = pd.DataFrame(
         {
             "Treatment": listed["treatment_id"],
-            "Started": [local(at, zone)[:16] for at in listed["started_at"]],
+            "Started": [local(at, zone) for at in listed["started_at"]],
             "Flags": listed["flags"],
-            "Unit": listed["unit_token"],
-            "Generator": listed["generator"].fillna("not logged"),
+            "Rules that fired": listed["rules"],
+            "Unit": listed["unit_token"].fillna(nothing),
+            "Shift": listed["shift"].fillna(nothing),
+            "Generator": [shown("generator", v) for v in listed["generator"]],
+            "Site": [shown("site", v) for v in listed["site"]],
         }
     )
     event = st.dataframe(
         table,
         hide_index=True,
         width="stretch",
-        height=560,
+        height=250,
         on_select="rerun",
         selection_mode="single-row",
         key="worklist",
     )
-    if total > len(listed):
-        st.caption(f"The first {len(listed)} of {total:,} are listed.")
-    st.text_input("Find a treatment by its id", key="find_treatment", on_change=_find)
-    st.download_button(
+    left, middle, right = st.columns([2, 1, 2], vertical_alignment="bottom")
+    left.text_input("Find a treatment by its id", key="find_treatment", on_change=_find)
+    middle.download_button(
         "Listed rows as CSV",
         data=lambda: parts.csv_of(listed),
         file_name="treatments.csv",
         mime="text/csv",
         on_click="ignore",
     )
+    if total > len(listed):
+        right.caption(f"The first {len(listed)} of {total:,} are listed.")
     picked = event["selection"]["rows"] if event else []
     if picked and picked[0] < len(listed):
         return str(listed["treatment_id"].iloc[picked[0]])
