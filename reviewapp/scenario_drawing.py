@@ -53,7 +53,7 @@ def filters_svg(comparison: Comparison, colours: Colours) -> str:
     counts = comparison.filters
     height = 84.0
     left, right = 74.0, WIDTH - 150.0
-    top = max(counts["before_at_most"], counts["after_at_most"], counts["logged"], 1)
+    top = max(counts["before_at_most"], counts["after_at_most"], 1)
 
     def long(value: float) -> float:
         return (right - left) * value / top

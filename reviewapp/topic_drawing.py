@@ -23,7 +23,7 @@ from reviewapp.svg import (
 )
 
 CELL = (104.0, 34.0)
-NAME_WIDTH = 120.0
+LETTER = 6.6  # width of a letter of a unit's name, about
 WEEKS = (760.0, 230.0)
 
 
@@ -31,23 +31,24 @@ def places_svg(sheet: Sheet, colours: Colours) -> str:
     """Unit by shift: the flagged share as a bar to scale, hidden cells hatched."""
     grid = sheet.places
     units = list(dict.fromkeys(grid["unit_token"]))
-    width = NAME_WIDTH + CELL[0] * len(SHIFTS)
+    left = max(60.0, LETTER * max(map(len, units), default=0) + 14)
+    width = left + CELL[0] * len(SHIFTS)
     height = 22 + CELL[1] * len(units)
     name = f"places-{sheet.topic.id}"
     parts = [hatching(name, colours)]
     for column, shift in enumerate(SHIFTS):
-        x = NAME_WIDTH + CELL[0] * column
+        x = left + CELL[0] * column
         parts.append(text(x + 4, 13, shift, colours["faint"], 11.5))
     for row, unit in enumerate(units):
         y = 22 + CELL[1] * row
         parts += [
             line(0, y, width, y, colours["lost"], 0.6, opacity=0.6),
-            text(0, y + 21, f"unit {unit}", colours["ink"], 12),
+            text(0, y + 21, unit, colours["ink"], 12),
         ]
     cells = grid.set_index(["unit_token", "shift"])
     for row, unit in enumerate(units):
         for column, shift in enumerate(SHIFTS):
-            place = NAME_WIDTH + CELL[0] * column, 22 + CELL[1] * row
+            place = left + CELL[0] * column, 22 + CELL[1] * row
             parts += _cell(cells.loc[(unit, shift)], place, name, colours)
     words = f"{sheet.topic.title} by unit and shift. {sheet.where}"
     return drawing(width, height, words, parts)
