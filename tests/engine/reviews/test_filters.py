@@ -95,7 +95,7 @@ def test_a_log_without_filters_says_so(reviewed):
     assert review.lives.empty
 
 
-def test_the_most_urgent_filter_in_use_comes_first(reviewed):
+def test_the_most_urgent_comes_first_and_of_a_state_the_one_in_use(reviewed):
     courses = {
         "STEADY": 2.2 + NOISE[:10],
         "RISING": 2.2 + 0.12 * np.arange(10) + NOISE[:10],
@@ -114,11 +114,11 @@ def test_the_most_urgent_filter_in_use_comes_first(reviewed):
     review = review_filters(reviewed([*uses, gone], [*read, *old]))
     assert review.lives["filter_id"].tolist() == [
         "OVER",
+        "GONE",
         "NEAR",
         "RISING",
         "FEW",
         "STEADY",
-        "GONE",
     ]
     assert review.sentence.startswith(
         "6 filters in the log, 5 still in use at its end. Of those, 1 is over the"
