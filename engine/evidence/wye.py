@@ -47,7 +47,7 @@ VOLUME_NODES_COUNT = Number(
     known="ours",
 )
 WIDE_NODES_COUNT = Number(
-    value=8.0,
+    value=5.0,
     unit="count",
     source=OURS,
     where="limb volumes the age is averaged over where the share is a series",
