@@ -27,8 +27,17 @@ COLUMNS = (
 )
 
 
-def style(colours: Colours) -> str:
-    """Rules of this table; class names begin with ``m-``."""
+_PAPER = (
+    ".m-table{font-size:8.4pt}.m-table summary{list-style:none;padding:2px 0;"
+    "margin-left:0}.m-head{padding:2px 0;font-size:7.6pt}.m-row{gap:8px}"
+    ".m-open{padding:4px 0 10px 0}.m-row small,.m-open small{font-size:7.4pt}"
+    ".m-group{padding:8px 0 3px;break-after:avoid}.m-head{break-after:avoid}"
+    ".m-change{font-size:7.8pt}"
+)
+
+
+def style(colours: Colours, paper: bool = False) -> str:
+    """Rules of this table; class names begin with ``m-``. Closer on paper."""
     return (
         "<style>"
         ".m-table{border-top:1px solid var(--m-line)}"
@@ -53,8 +62,7 @@ def style(colours: Colours) -> str:
         ".m-row{grid-template-columns:1fr 92px 170px}"
         ".m-row .m-change,.m-row .m-spark,.m-row .m-n{grid-column:auto}}"
         "@media print{.m-table details{break-inside:avoid}"
-        ".m-table summary{list-style:none}}"
-        "</style>"
+        ".m-table summary{list-style:none}}" + (_PAPER if paper else "") + "</style>"
     )
 
 

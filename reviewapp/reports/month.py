@@ -25,7 +25,10 @@ def month_sections(
     """Heading and HTML of each section, in the order they are read."""
     return [
         ("In short", _short(month)),
-        ("The indicators", style(LIGHT) + lines_html(month, LIGHT, {}, marks=marks)),
+        (
+            "The indicators",
+            style(LIGHT, paper=True) + lines_html(month, LIGHT, {}, marks=marks),
+        ),
         ("What stands out, opened", _opened(month, units, marks)),
         ("Filters and sensors needing a look", _look(month)),
         ("Dose forgone, aerosol to room and sensors", _dose(month)),
@@ -203,15 +206,14 @@ def _signature(month: Month) -> str:
 def _counting(month: Month) -> str:
     rows = [
         (
-            each.indicator.id,
-            each.indicator.title,
+            f"{each.indicator.id} {each.indicator.title}",
             each.indicator.of,
             each.indicator.left_out,
             each.indicator.basis,
         )
         for each in month.lines
     ]
-    heads = ("", "Indicator", "Counted among", "Left out", "Why")
+    heads = ("Indicator", "Counted among", "Left out", "Why")
     stamp = month.snapshot
     held = (
         f"Engine {stamp['engine_version']}, log {stamp['log_fingerprint']}, policy"

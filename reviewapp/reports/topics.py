@@ -63,7 +63,8 @@ def sheet_html(
     ]
     if sheet.examples:
         drawn = [
-            _head(f"Example {number}") + example_html(example, draw)
+            '<div style="break-inside:avoid">'
+            f"{_head(f'Example {number}')}{example_html(example, draw)}</div>"
             for number, example in enumerate(sheet.examples, start=1)
         ]
         parts.append(_two(*drawn) if draw is None else "".join(drawn))
