@@ -23,7 +23,7 @@ def asked_for(rows: Batch, name: str) -> np.ndarray:
 
 def drug_holds(rows: Batch, names: Sequence[str]) -> Ternary:
     """Whether the charted drug holds one of these names, capitals aside."""
-    held = drugs_held(rows, names).any(axis=0)
+    held = np.any(drugs_held(rows, names), axis=0)
     return Ternary.of(held, ~is_missing(rows, "drug"))
 
 

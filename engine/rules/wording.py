@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import Any
+from typing import Any, TypeGuard
 
 from engine.batch import COLUMNS
 from engine.columns import FRACTIONS, labels, shown_unit, words_of
@@ -62,7 +62,7 @@ _SETTING_UNITS = {
 }
 
 
-def is_logged(value: Any) -> bool:
+def is_logged(value: Any) -> TypeGuard[Any]:
     """False for None, NaN, and the missing values of a data frame."""
     if value is None or type(value).__name__ in {"NAType", "NaTType"}:
         return False

@@ -16,7 +16,6 @@ from numpy.typing import ArrayLike
 from engine.evidence.filter import INTERVAL_COVER_FRAC
 from engine.evidence.review import POINTS_TO_DRAW_COUNT, POINTS_TO_TEST_COUNT
 
-
 # A difference of two equal series is nothing, not the last bits of its arithmetic.
 _PLACES = 12
 

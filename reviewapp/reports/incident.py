@@ -199,17 +199,17 @@ def _elsewhere(incident: Incident) -> str:
 def _actions(incident: Incident) -> str:
     parts = [_p(incident.harm_sentence)]
     if not incident.harm.empty:
-        rows = [
+        rated = [
             (row["role"], row["harm"], row["reason"] or "")
             for row in incident.harm.to_dict("records")
         ]
-        parts.append(table(("Rater's role", "Harm", "Reason"), rows))
+        parts.append(table(("Rater's role", "Harm", "Reason"), rated))
     if incident.actions.empty:
         parts.append(_p("No action has been decided yet."))
     else:
-        names = ("text", "strength", "owner_role", "measure", "due")
+        kept = ("text", "strength", "owner_role", "measure", "due")
         decided = [
-            tuple(row[name] for name in names)
+            tuple(row[name] for name in kept)
             for row in incident.actions.to_dict("records")
         ]
         heads = ("Decided", "Strength", "Owner (role)", "Measured by", "Due")

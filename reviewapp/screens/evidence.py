@@ -10,6 +10,7 @@ import pandas as pd
 import streamlit as st
 
 from engine import evidence
+from engine.evidence.shape import Source
 from engine.physics.validation import strict_agreement, validation_table
 from engine.rules import ALL_RULES, FAMILIES
 from engine.rules.wording import cited, published
@@ -66,7 +67,7 @@ def _rules() -> None:
                 st.markdown(f"*Asks:* {parts.plain(rule.question)}")
                 st.markdown(f"*Would change:* {parts.plain(rule.would_change)}")
                 for item in rule.evidence:
-                    words = cited(item) if hasattr(item, "authors") else published(item)
+                    words = cited(item) if isinstance(item, Source) else published(item)
                     st.markdown(f"- {parts.plain(words)}")
                 for source in rule.against:
                     st.markdown(f"- found otherwise: {parts.plain(cited(source))}")

@@ -114,7 +114,8 @@ def _worklist(asked: dict[str, str]) -> tuple[pd.DataFrame, int]:
 
 
 def _where(asked: dict[str, str]) -> tuple[str, dict[str, Any]]:
-    clauses, params = ["true"], {}
+    clauses = ["true"]
+    params: dict[str, Any] = {}
     if asked["month"] != ANY:
         clauses.append("a.local_month = $month")
         params["month"] = asked["month"]
