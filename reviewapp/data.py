@@ -242,9 +242,9 @@ def _once(question: str, ask: Any, *arguments: Any, reads_journal: bool = False)
 
 
 def frame(sql: str, params: dict[str, Any] | None = None) -> pd.DataFrame:
-    """A few rows of the replay; the caller limits them."""
+    """A few rows of the replay, to keep and change; the caller limits them."""
     listed = tuple(sorted((params or {}).items(), key=lambda item: item[0]))
-    return _once(sql, lambda: replay().frame(sql, params), repr(listed))
+    return _once(sql, lambda: replay().frame(sql, params), repr(listed)).copy()
 
 
 def months() -> list[str]:

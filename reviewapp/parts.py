@@ -1,4 +1,4 @@
-"""Pieces every screen shares: the sentence, the caution, the marks, the signature."""
+"""Pieces every screen shares: the sentence, the caution, the marks, the tables."""
 
 from __future__ import annotations
 
@@ -28,7 +28,6 @@ ANSWER_WORDS = {
     "not_asked": "not asked",
     "cannot_tell": "cannot tell",
 }
-ROLES = ("quality lead", "educator", "incident reviewer", "clinical engineer", "other")
 _FORMULA = ("=", "+", "-", "@", "\t", "\r", "\0")
 
 
@@ -88,18 +87,6 @@ def labelled(table: pd.DataFrame) -> pd.DataFrame:
     return table.rename(
         columns={name: _ADDED.get(name) or label_of(name) for name in table.columns}
     )
-
-
-def signature(key: str) -> tuple[str, str]:
-    """Who signs an entry of the journal, and in which role."""
-    left, right = st.columns(2)
-    who = left.text_input(
-        "Signed by (initials or a token)",
-        key=f"{key}_who",
-        max_chars=40,
-        autocomplete="off",
-    )
-    return who.strip(), right.selectbox("Role", ROLES, key=f"{key}_role")
 
 
 def answer_mark(answer: str, words: str = "") -> str:

@@ -30,7 +30,7 @@ from engine.journal.entry import (
     written,
 )
 
-VERDICT_COLUMNS = ("finding_id", "verdict", "reason", "at", "actor", "role")
+VERDICT_COLUMNS = ("finding_id", "verdict", "reason", "at", "actor", "role", "seq")
 
 _Mark = tuple[int, int, int]
 
@@ -125,16 +125,16 @@ class Journal:
     def verdicts(self) -> pd.DataFrame:
         """The latest standing verdict of each actor on each finding.
 
-        Columns  finding_id, verdict, reason, at (UTC), actor, role.
+        Columns  finding_id, verdict, reason, at (UTC), actor, role, seq (its entry).
         """
         latest = {(e.object, e.actor): e for e in self.standing("verdict")}
         rows = [
-            (e.object, e.new, e.reason, e.at_utc, e.actor, e.role)
+            (e.object, e.new, e.reason, e.at_utc, e.actor, e.role, e.seq)
             for e in latest.values()
         ]
         frame = pd.DataFrame(rows, columns=list(VERDICT_COLUMNS))
-        texts = [name for name in VERDICT_COLUMNS if name != "at"]
-        return frame.astype({**dict.fromkeys(texts, "str"), "at": "datetime64[us]"})
+        kinds = {**dict.fromkeys(VERDICT_COLUMNS, "str"), "at": "datetime64[us]"}
+        return frame.astype({**kinds, "seq": "int64"})
 
     @property
     def head(self) -> str:

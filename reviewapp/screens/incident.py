@@ -14,7 +14,7 @@ from engine.errors import EngineError
 from engine.reviews.explanations import Explanation
 from engine.reviews.incident import Incident
 from engine.reviews.incident_words import STRENGTHS, local
-from reviewapp import data, parts, theme
+from reviewapp import data, entry, parts, theme
 from reviewapp.incident_drawing import burden_svg, timeline_svg
 from reviewapp.report import page
 from reviewapp.reports.incident import GRADE_MARKS, ROLES, incident_sections
@@ -26,6 +26,7 @@ def show() -> None:
     """The whole screen."""
     incident = _chosen()
     if incident is None:
+        parts.caution()
         return
     parts.opening(incident.sentence)
     parts.caution()
@@ -238,22 +239,26 @@ def _harm_and_actions(incident: Incident) -> None:
     if incident.facts["incident_id"] is None:
         st.caption("Only a fault in the log can be rated, decided on and signed.")
         return
+    about = _about(incident)
     rate, decide = st.columns(2, gap="large")
-    with rate, st.form("harm", clear_on_submit=True):
+    with rate, entry.form("harm"):
         st.markdown("**Rate the harm**; two raters, neither seeing the other's first.")
         harm = st.selectbox("Harm", [*HARMS.split(), "unknown"])
-        who, role = parts.signature("harm")
-        reason = st.text_input("Reason", key="harm_reason")
+        reason = st.text_input("Reason")
+        signed = entry.signature()
         if st.form_submit_button("Keep the rating"):
-            _keep(incident, "note", {"harm": harm}, who, role, reason)
-    with decide, st.form("action", clear_on_submit=True):
+            new = {"harm": harm}
+            entry.keep(
+                "harm", signed, action="note", object=about, new=new, reason=reason
+            )
+    with decide, entry.form("action"):
         st.markdown("**Decide an action**")
-        text = st.text_input("Action", key="action_text")
+        text = st.text_input("Action")
         strength = st.selectbox("Strength", STRENGTHS)
-        owner = st.text_input("Owner (role, not a name)", key="action_owner")
-        measure = st.text_input("Measured by", key="action_measure")
-        due = st.date_input("Due", value=None, key="action_due")
-        who, role = parts.signature("action")
+        owner = st.text_input("Owner (role, not a name)")
+        measure = st.text_input("Measured by")
+        due = st.date_input("Due", value=None)
+        signed = entry.signature()
         if st.form_submit_button("Keep the decision"):
             new = {
                 "text": text,
@@ -262,7 +267,10 @@ def _harm_and_actions(incident: Incident) -> None:
                 "measure": measure,
                 "due": str(due or ""),
             }
-            _keep(incident, "decision", new, who, role, "")
+            if text.strip():
+                entry.keep("action", signed, action="decision", object=about, new=new)
+            else:
+                st.warning("Say what is decided, then keep it.")
 
 
 def _sign_off(incident: Incident) -> None:
@@ -282,32 +290,20 @@ def _sign_off(incident: Incident) -> None:
     )
     if incident.facts["incident_id"] is None:
         return
-    with st.form("sign", clear_on_submit=True):
-        who, role = parts.signature("sign")
+    with entry.form("sign"):
+        signed = entry.signature()
         agreed = st.checkbox("I have read the rows cited and the report.")
         if st.form_submit_button("Sign"):
             if agreed:
-                _keep(incident, "sign_off", {"report": "incident"}, who, role, "")
+                new = {"report": "incident"}
+                about = _about(incident)
+                entry.keep("sign", signed, action="sign_off", object=about, new=new)
             else:
                 st.warning("Tick that you have read it, then sign.")
 
 
-def _keep(
-    incident: Incident, action: str, new: Any, who: str, role: str, reason: str
-) -> None:
-    try:
-        data.keep(
-            action=action,
-            object=f"incident:{incident.facts['incident_id']}",
-            new=new,
-            actor=who,
-            role=role,
-            reason=reason,
-        )
-    except EngineError as problem:
-        st.warning(str(problem))
-        return
-    st.rerun()
+def _about(incident: Incident) -> str:
+    return f"incident:{incident.facts['incident_id']}"
 
 
 show()

@@ -8,7 +8,7 @@ import streamlit as st
 from engine.columns import BAD_ROW_CODES, RECORD_TABLES, TREATMENT, labels
 from engine.log.dictionary import dictionary, template
 from engine.reviews.incident_words import local
-from reviewapp import data, parts
+from reviewapp import data, entry, parts
 from reviewapp.log_drawing import unknown_svg
 
 SHOWN = 500
@@ -145,16 +145,32 @@ def _journal() -> None:
     with st.expander("The last entries"):
         rows = [
             {
-                "No.": entry.seq,
-                "At (UTC)": f"{entry.at:%Y-%m-%d %H:%M}",
-                "Action": entry.action,
-                "About": entry.object,
-                "By": f"{entry.actor} ({entry.role})",
-                "Why": entry.reason,
+                "No.": each.seq,
+                "At (UTC)": f"{each.at:%Y-%m-%d %H:%M}",
+                "Action": each.action,
+                "About": each.object,
+                "By": f"{each.actor} ({each.role})",
+                "Why": each.reason,
             }
-            for entry in entries[-100:][::-1]
+            for each in entries[-100:][::-1]
         ]
         st.dataframe(pd.DataFrame(rows), hide_index=True, width="stretch")
+    _take_back(
+        {
+            each.seq: f"{each.seq}: {each.action} on {each.object}"
+            for each in journal.standing()
+        }
+    )
+
+
+def _take_back(standing: dict[int, str]) -> None:
+    with st.expander("Take an entry back"), entry.form("take_back"):
+        st.caption("Nothing is erased: the entry and its withdrawal both stay.")
+        latest_first = sorted(standing, reverse=True)
+        seq = st.selectbox("Entry", latest_first, format_func=lambda one: standing[one])
+        signed = entry.signature()
+        if st.form_submit_button("Take it back") and seq is not None:
+            entry.take_back(seq, signed)
 
 
 def _dictionary() -> None:

@@ -2,9 +2,6 @@
 
 from __future__ import annotations
 
-from html import escape
-from typing import Any
-
 import streamlit as st
 
 from engine.errors import EngineError
@@ -14,7 +11,7 @@ from engine.reviews.incident_words import STRENGTHS
 from engine.reviews.indicators import INDICATORS
 from engine.reviews.month import Month
 from engine.reviews.month_journal import differences
-from reviewapp import data, parts, theme
+from reviewapp import data, entry, parts, theme
 from reviewapp.month_html import lines_html, style
 from reviewapp.parts import address
 from reviewapp.report import page
@@ -33,6 +30,7 @@ def show() -> None:
     """The whole screen."""
     month = _chosen()
     if month is None:
+        parts.caution()
         return
     parts.opening(month.sentence)
     parts.caution()
@@ -201,14 +199,20 @@ def _chart_check(month: Month) -> None:
             "Read the chart itself before the screen of the treatment, and without the"
             " other reviewer's word."
         )
-        with st.form("chart", clear_on_submit=True):
+        with entry.form("chart"):
             chart = st.selectbox("Chart", found.charts)
             said = st.radio("In this setup", list(READ), horizontal=True)
             reason = st.text_input("What was seen")
-            who, role = parts.signature("chart")
+            signed = entry.signature()
             if st.form_submit_button("Keep what was read"):
-                new = READ[said]
-                _keep("verdict", f"{chart}:{CHART}", new, who, role, reason)
+                entry.keep(
+                    "chart",
+                    signed,
+                    action="verdict",
+                    object=f"{chart}:{CHART}",
+                    new=READ[said],
+                    reason=reason,
+                )
 
 
 READ = {
@@ -219,13 +223,14 @@ READ = {
 
 
 def _draw_sample(month: Month) -> None:
-    with st.expander("Draw charts to check"), st.form("sample"):
+    with st.expander("Draw charts to check"), entry.form("sample"):
         size = st.number_input("Charts", 10, 400, 60, step=10)
         seed = st.number_input("Seed, kept with the sample", 1, 999_999, 1)
-        who, role = parts.signature("sample")
+        signed = entry.signature()
         if st.form_submit_button("Draw"):
             drawn = draw_sample(data.replay(), month.month, int(size), int(seed))
-            _keep("note", f"sample:{month.month}", drawn.record, who, role)
+            about = f"sample:{month.month}"
+            entry.keep("sample", signed, action="note", object=about, new=drawn.record)
 
 
 def _decisions(month: Month) -> None:
@@ -238,7 +243,7 @@ def _decisions(month: Month) -> None:
             hide_index=True,
             width="stretch",
         )
-    with st.expander("Record a decision"), st.form("decision", clear_on_submit=True):
+    with st.expander("Record a decision"), entry.form("decision"):
         about = st.selectbox(
             "About",
             ["the whole month", *(f"{each.id} {each.title}" for each in INDICATORS)],
@@ -248,7 +253,7 @@ def _decisions(month: Month) -> None:
         owner = st.text_input("Owner (role, not a name)")
         measure = st.text_input("Measured by")
         due = st.date_input("Due", value=None)
-        who, role = parts.signature("decision")
+        signed = entry.signature()
         if st.form_submit_button("Keep the decision"):
             place = "" if about == "the whole month" else f":{about.split()[0]}"
             new = {
@@ -259,7 +264,8 @@ def _decisions(month: Month) -> None:
                 "due": str(due or ""),
             }
             if text.strip():
-                _keep("decision", f"month:{month.month}{place}", new, who, role)
+                on = f"month:{month.month}{place}"
+                entry.keep("decision", signed, action="decision", object=on, new=new)
             else:
                 st.warning("Say what is decided, then keep it.")
     _freeze_baseline(month)
@@ -269,7 +275,7 @@ def _freeze_baseline(month: Month) -> None:
     """A dated decision on which months the limits of an indicator stand on."""
     with (
         st.expander("Freeze the months an indicator's limits stand on"),
-        st.form("baseline", clear_on_submit=True),
+        entry.form("baseline"),
     ):
         shares = [each for each in INDICATORS if each.is_share]
         about = st.selectbox(
@@ -280,10 +286,11 @@ def _freeze_baseline(month: Month) -> None:
             ends = st.select_slider(
                 "Months", month.months, value=ends, format_func=month_words
             )
-        who, role = parts.signature("baseline")
+        signed = entry.signature()
         if st.form_submit_button("Freeze"):
             new = {"since": ends[0], "until": ends[1]}
-            _keep("decision", f"baseline:{about.split()[0]}", new, who, role)
+            on = f"baseline:{about.split()[0]}"
+            entry.keep("baseline", signed, action="decision", object=on, new=new)
 
 
 def _sign_off(month: Month) -> None:
@@ -298,17 +305,17 @@ def _sign_off(month: Month) -> None:
     if month.unit is not None:
         st.caption("A month is signed for the whole department.")
         return
-    with st.form("sign", clear_on_submit=True):
+    with entry.form("sign"):
         st.caption(
             "A signature freezes the figures with the hashes of log, policy and"
             " journal."
         )
-        who, role = parts.signature("sign")
+        signed = entry.signature()
         agreed = st.checkbox("I have read the month and its cautions.")
         if st.form_submit_button("Sign"):
             if agreed:
-                new = month.snapshot
-                _keep("sign_off", f"month:{month.month}", new, who, role)
+                new, on = month.snapshot, f"month:{month.month}"
+                entry.keep("sign", signed, action="sign_off", object=on, new=new)
             else:
                 st.warning("Tick that you have read it, then sign.")
 
@@ -327,19 +334,6 @@ def _report(month: Month) -> None:
         mime="text/html",
         on_click="ignore",
     )
-
-
-def _keep(
-    action: str, object: str, new: Any, who: str, role: str, reason: str = ""
-) -> None:
-    try:
-        data.keep(
-            action=action, object=object, new=new, actor=who, role=role, reason=reason
-        )
-    except EngineError as problem:
-        st.warning(escape(str(problem)))
-        return
-    st.rerun()
 
 
 show()

@@ -2,15 +2,13 @@
 
 from __future__ import annotations
 
-from typing import Any
-
 import streamlit as st
 
 from engine.errors import EngineError
 from engine.reviews.figures import month_words
 from engine.reviews.topic_catalogue import TOPICS
 from engine.reviews.topics import CHOICES, Sheet, Topics
-from reviewapp import data, parts, theme
+from reviewapp import data, entry, parts, theme
 from reviewapp.parts import address
 from reviewapp.report import page
 from reviewapp.reports.topics import (
@@ -28,6 +26,7 @@ def show() -> None:
     """The whole screen."""
     review = _chosen()
     if review is None:
+        parts.caution()
         return
     parts.opening(review.sentence)
     parts.caution()
@@ -138,13 +137,13 @@ def _how_chosen(review: Topics) -> None:
 def _sessions(review: Topics) -> None:
     st.subheader("What past sessions show")
     st.markdown(sessions_html(review.sessions, theme.colours()), unsafe_allow_html=True)
-    with st.expander("Record a session"), st.form("session", clear_on_submit=True):
+    with st.expander("Record a session"), entry.form("session"):
         titles = {topic.title: topic.id for topic in TOPICS}
         topic = st.selectbox("Topic", list(titles))
         held_on = st.date_input("Held on", value=None)
         units = st.multiselect("Units taught; none means all", data.units())
         weeks = st.number_input("Weeks to leave out while it spread", 1, 12, 1)
-        who, role = parts.signature("session")
+        signed = entry.signature()
         if st.form_submit_button("Keep the session"):
             if held_on is None:
                 st.warning("Say when it was held, then keep it.")
@@ -154,7 +153,8 @@ def _sessions(review: Topics) -> None:
                     "units": units,
                     "weeks_left_out": int(weeks),
                 }
-                _keep(f"session:{titles[topic]}", new, who, role)
+                about = f"session:{titles[topic]}"
+                entry.keep("session", signed, action="note", object=about, new=new)
 
 
 def _report(review: Topics) -> None:
@@ -167,17 +167,6 @@ def _report(review: Topics) -> None:
         mime="text/html",
         on_click="ignore",
     )
-
-
-def _keep(object: str, new: Any, who: str, role: str) -> None:
-    try:
-        data.keep(
-            action="note", object=object, new=new, actor=who, role=role, reason=""
-        )
-    except EngineError as problem:
-        st.warning(str(problem))
-        return
-    st.rerun()
 
 
 show()

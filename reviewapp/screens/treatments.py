@@ -9,7 +9,6 @@ import pandas as pd
 import streamlit as st
 
 from engine.columns import ANSWERS, labels
-from engine.errors import EngineError
 from engine.physics.balance import ASSUMPTIONS, REFUSALS, balance
 from engine.physics.explain import explain
 from engine.physics.picture import split_picture
@@ -18,7 +17,7 @@ from engine.reviews.incident_words import local
 from engine.rules import ALL_RULES, rule_of
 from engine.rules.phrases import batch_of_one
 from engine.rules.wording import cited, is_logged, published, shown
-from reviewapp import data, parts, theme
+from reviewapp import data, entry, parts, theme
 from reviewapp.circuit_drawing import band, circuit_svg, drawing_of
 from reviewapp.treatment_drawing import sites_svg, split_svg
 
@@ -28,6 +27,11 @@ VERDICTS = {
     "confirmed": "confirm",
     "dismissed": "dismiss",
     "needs_chart_check": "needs chart check",
+}
+VERDICTS_GIVEN = {
+    "confirmed": "confirmed",
+    "dismissed": "dismissed",
+    "needs_chart_check": "chart check asked for",
 }
 STATES = (ANY, "not yet reviewed", *VERDICTS)
 STRENGTHS = {
@@ -290,47 +294,33 @@ def _evidence(rule: Any) -> list[str]:
 
 def _verdicts(finding_id: str, said: pd.DataFrame) -> None:
     for verdict in said.to_dict("records"):
-        words = VERDICTS.get(verdict["verdict"], verdict["verdict"])
+        words = VERDICTS_GIVEN.get(verdict["verdict"], verdict["verdict"])
         reason = f": {verdict['reason']}" if verdict["reason"] else ""
         when = f"{verdict['at']:%Y-%m-%d %H:%M} UTC"
         who = f"{words} by {verdict['actor']} ({verdict['role']}), {when}{reason}"
         st.caption(parts.plain(who))
         if st.button("Take back", key=f"back_{finding_id}_{verdict['actor']}"):
-            _take_back(finding_id, verdict["actor"], verdict["role"])
-
-
-def _take_back(finding_id: str, actor: str, role: str) -> None:
-    standing = [
-        entry
-        for entry in data.journal().standing("verdict")
-        if entry.object == finding_id and entry.actor == actor
-    ]
-    if standing:
-        data.take_back(standing[-1].seq, actor, role)
-    st.rerun()
+            signed = (verdict["actor"], verdict["role"])
+            entry.take_back(int(verdict["seq"]), signed)
 
 
 def _verdict_form(finding_id: str) -> None:
-    with st.form(f"verdict_{finding_id}", clear_on_submit=True):
+    name = f"verdict_{finding_id}"
+    with entry.form(name):
         verdict = st.radio(
             "Verdict", list(VERDICTS), format_func=VERDICTS.get, horizontal=True
         )
         reason = st.text_input("Why", max_chars=400)
-        who, role = parts.signature(f"verdict_{finding_id}")
+        signed = entry.signature()
         if st.form_submit_button("Keep the verdict"):
-            try:
-                data.keep(
-                    action="verdict",
-                    object=finding_id,
-                    new=verdict,
-                    actor=who,
-                    role=role,
-                    reason=reason,
-                )
-            except EngineError as problem:
-                st.warning(parts.plain(problem))
-            else:
-                st.rerun()
+            entry.keep(
+                name,
+                signed,
+                action="verdict",
+                object=finding_id,
+                new=verdict,
+                reason=reason,
+            )
 
 
 def _sites(row: dict[str, Any]) -> None:

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import tomllib
-from typing import Any
 
 import streamlit as st
 
@@ -13,7 +12,7 @@ from engine.replay import Scenario, scenario_from
 from engine.reviews.figures import month_words
 from engine.reviews.scenario import Comparison, ready_scenarios, scenario_record
 from engine.rules.wording import label_of, word
-from reviewapp import data, parts, theme
+from reviewapp import data, entry, parts, theme
 from reviewapp.report import page
 from reviewapp.reports.scenario import classes_table, rules_table, scenario_sections
 from reviewapp.scenario_drawing import filters_svg, outcome_svg
@@ -44,6 +43,7 @@ def show() -> None:
         return
     comparison = _compared(scenario)
     if comparison is None:
+        parts.caution()
         return
     parts.opening(comparison.sentence)
     parts.caution()
@@ -213,28 +213,18 @@ def _keep_it(comparison: Comparison) -> None:
         mime="text/html",
         on_click="ignore",
     )
-    with st.expander("Keep this scenario"), st.form("keep_scenario"):
-        who, role = parts.signature("scenario")
+    with st.expander("Keep this scenario"), entry.form("scenario"):
         reason = st.text_input("Why it is kept")
+        signed = entry.signature()
         if st.form_submit_button("Keep it"):
-            _keep(comparison, who, role, reason)
-
-
-def _keep(comparison: Comparison, who: str, role: str, reason: str) -> None:
-    new: Any = scenario_record(comparison.scenario)
-    try:
-        data.keep(
-            action="scenario",
-            object=f"scenario:{comparison.scenario.name}",
-            new=new,
-            actor=who,
-            role=role,
-            reason=reason,
-        )
-    except EngineError as problem:
-        st.warning(str(problem))
-        return
-    st.rerun()
+            entry.keep(
+                "scenario",
+                signed,
+                action="scenario",
+                object=f"scenario:{comparison.scenario.name}",
+                new=scenario_record(comparison.scenario),
+                reason=reason,
+            )
 
 
 show()

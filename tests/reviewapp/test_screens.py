@@ -127,19 +127,32 @@ def test_a_file_that_is_no_log_is_one_message_and_no_trace(tmp_path):
     assert "bad" in at.warning[0].value
 
 
+def submitted(at, form):
+    return next(b for b in at.button if b.form_id == form).click()
+
+
+def signer(at, form):
+    return next(
+        t for t in at.text_input if t.form_id == form and t.label.startswith("Signed")
+    )
+
+
 def test_a_verdict_is_kept_shown_and_taken_back():
     at = opened("treatments", log="case-jet_at_the_y", rule="PL01", answer="fires")
     check(at, "treatments")
-    who = next(t for t in at.text_input if t.key == "verdict_T1:PL01_who")
-    who.set_value("AB").run()
-    form = "verdict_T1:PL01"
-    submit = next(b for b in at.button if b.form_id == form)
-    submit.click().run()
+    submitted(at, "verdict_T1:PL01_0").run()
+    assert [w.value for w in at.warning] == [
+        "Sign it with initials or a token, then keep it."
+    ]
+    signer(at, "verdict_T1:PL01_0").set_value("AB")
+    submitted(at, "verdict_T1:PL01_0").run()
     assert not at.exception
-    assert any("confirm by AB" in c.value.replace("\\", "") for c in at.caption)
+    assert not at.warning
+    assert signer(at, "verdict_T1:PL05_0").value == "AB"
+    assert any("confirmed by AB" in c.value.replace("\\", "") for c in at.caption)
     back = next(b for b in at.button if str(b.key).startswith("back_T1:PL01"))
     back.click().run()
-    assert not any("confirm by AB" in c.value.replace("\\", "") for c in at.caption)
+    assert not any("confirmed by AB" in c.value.replace("\\", "") for c in at.caption)
 
 
 def test_a_flag_on_screen_carries_the_words_of_its_rule():

@@ -46,6 +46,7 @@ def test_a_journal_that_does_not_exist_yet_is_empty(tmp_path):
         "at",
         "actor",
         "role",
+        "seq",
     ]
     assert not book.path.exists()
 
