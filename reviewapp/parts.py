@@ -3,19 +3,20 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
+from functools import partial
 from html import escape
-from typing import Any
 from urllib.parse import urlencode
 
-import pandas as pd
 import streamlit as st
 
 from engine.columns import ANSWERS
 from engine.reviews.topics import Example
-from engine.rules.wording import label_of
 from reviewapp import data, svg, theme
 from reviewapp.circuit_drawing import circuit_svg, drawing_of
+from reviewapp.paper.files import ENDINGS, file_of
+from reviewapp.paper.pdf import is_installed as pdf_is_installed
+from reviewapp.report import Report
 
 CAUTION = (
     "Needs clinical confirmation. Local policy and licensed practice decide. Doses are "
@@ -28,7 +29,6 @@ ANSWER_WORDS = {
     "not_asked": "not asked",
     "cannot_tell": "cannot tell",
 }
-_FORMULA = ("=", "+", "-", "@", "\t", "\r", "\0")
 
 
 def opening(sentence: str) -> None:
@@ -62,33 +62,6 @@ def plain(words: object) -> str:
     return re.sub(r"([\\`*_{}\[\]()#+!|<>$~:])", r"\\\1", str(words))
 
 
-# Columns a review adds, which the dictionary of the log does not hold.
-_ADDED = {
-    "hours_h": "Hours in use",
-    "resistance_cmh2o_per_lps": "At the reference flow, cmH2O/(L/s)",
-    "doubt": "Why not used",
-    "captured_ml": "Caught, mL",
-    "treatments": "Treatments",
-    "patients": "Patients",
-    "text": "What",
-    "strength": "Strength",
-    "owner_role": "Owner (role)",
-    "measure": "Measured by",
-    "due": "Due",
-    "actor": "By",
-    "role": "Role",
-    "at": "At (UTC)",
-    "about": "About",
-}
-
-
-def labelled(table: pd.DataFrame) -> pd.DataFrame:
-    """The same table with its columns called what the dictionary calls them."""
-    return table.rename(
-        columns={name: _ADDED.get(name) or label_of(name) for name in table.columns}
-    )
-
-
 def answer_mark(answer: str, words: str = "") -> str:
     """The mark of an answer: square, circle, dash or hatched square with "?"."""
     shown, said = theme.colours(), words or ANSWER_WORDS[answer]
@@ -116,26 +89,33 @@ def legend() -> None:
     )
 
 
+def downloads(name: str, make: Callable[[], Report]) -> None:
+    """The report as files; each is made when it is asked for."""
+    endings = [e for e in ENDINGS if e != ".pdf" or pdf_is_installed()]
+    places = st.columns([1] * len(endings) + [2])
+    for place, ending in zip(places, endings, strict=False):
+        words, media = ENDINGS[ending]
+        place.download_button(
+            words,
+            data=partial(_file, make, ending),
+            file_name=f"{name}{ending}",
+            mime=media,
+            on_click="ignore",
+            width="stretch",
+        )
+    if len(endings) < len(ENDINGS):
+        st.caption("A PDF needs the extra package named in the README.")
+
+
+def _file(make: Callable[[], Report], ending: str) -> bytes:
+    return file_of(make(), data.banner(), ending)
+
+
 def example_drawing(example: Example) -> str:
     """The circuit of an example treatment, for screen and paper."""
     return circuit_svg(
         drawing_of(example.row, data.policy()), theme.colours(), compact=True
     )
-
-
-def csv_of(table: pd.DataFrame) -> bytes:
-    """A table as CSV; text that a spreadsheet would run as a formula is made text."""
-    safe = table.copy()
-    for name in safe.columns:
-        if not pd.api.types.is_numeric_dtype(safe[name]):
-            safe[name] = [_as_text(value) for value in safe[name]]
-    return safe.to_csv(index=False, lineterminator="\r\n").encode("utf-8-sig")
-
-
-def _as_text(value: Any) -> Any:
-    if isinstance(value, str) and value.startswith(_FORMULA):
-        return f"'{value}"
-    return value
 
 
 def details(title: str, rows: Mapping[str, str]) -> str:

@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from datetime import datetime
 from html import escape
+
+import pandas as pd
 
 from engine.replay import Replay
 from reviewapp.svg import LIGHT
@@ -21,6 +23,21 @@ CAUTION = (
 )
 
 Sections = Sequence[tuple[str, str]]
+
+
+@dataclass(frozen=True, kw_only=True)
+class Report:
+    """What is written to a file, whatever its kind.
+
+    ``name``      of the file, without an ending
+    ``sections``  heading and HTML, in the order they are read
+    ``tables``    the figures behind it, whole, by the name of their sheet
+    """
+
+    name: str
+    title: str
+    sections: Sections
+    tables: Mapping[str, pd.DataFrame]
 
 
 @dataclass(frozen=True, kw_only=True)

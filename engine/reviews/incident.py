@@ -441,8 +441,11 @@ def _evidence(
         state: _ids("treatment", own["treatment_id"])
         for state, own in treatments.groupby("filter_state")
     }
+    # A cleaning that did not stop a drift has not set the sensor back.
+    onset = at if started_at is None else min(at, started_at)
     reset = replay.frame(
-        rows.UNFILTERED_SINCE_RESET, {**who, "sensor": facts["sensor"], "at": at}
+        rows.UNFILTERED_SINCE_RESET,
+        {**who, "sensor": facts["sensor"], "at": at, "onset": onset},
     ).iloc[0]
     kinds = replay.frame(rows.KINDS_EVER, who)["kind"]
     state, filter_rows = _filter_state(replay, facts)

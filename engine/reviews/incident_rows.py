@@ -227,10 +227,10 @@ WITH reset AS (
   SELECT max(at_time) AS at_time FROM (
     SELECT checked_at AS at_time FROM sensor_check
     WHERE ventilator_token = $ventilator AND sensor::VARCHAR = $sensor
-      AND outcome IN ('recalibrated', 'replaced') AND checked_at < $at
+      AND outcome IN ('recalibrated', 'replaced') AND checked_at < $onset
     UNION ALL
     SELECT happened_at FROM service_event
-    WHERE ventilator_token = $ventilator AND kind = 'cleaning' AND happened_at < $at)
+    WHERE ventilator_token = $ventilator AND kind = 'cleaning' AND happened_at < $onset)
 )
 SELECT min(started_at) FILTER (expiratory_filter = 'absent') AS first_at,
        count(*) FILTER (expiratory_filter IS NULL) AS unknown_count,

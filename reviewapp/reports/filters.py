@@ -8,17 +8,29 @@ import pandas as pd
 
 from engine.reviews.filters import STATE_WORDS, Filters
 from reviewapp.filter_drawing import small_filter_svg, survival_svg
-from reviewapp.reports.incident import _list, _p, table
+from reviewapp.report import Report
+from reviewapp.reports.pieces import bullets, paragraph, table
+from reviewapp.reports.sheets import filter_tables
 from reviewapp.svg import LIGHT
 
 PRINTED_FILTERS = 60  # rows of the table; the most urgent come first
 DRAWN_FILTERS = 12
 
 
+def filter_report(review: Filters) -> Report:
+    """Every filter, as it leaves the app."""
+    return Report(
+        name="filters",
+        title="Expiratory filters",
+        sections=filter_sections(review),
+        tables=filter_tables(review),
+    )
+
+
 def filter_sections(review: Filters) -> list[tuple[str, str]]:
     """Heading and HTML of each section, in the order they are read."""
     return [
-        ("Filters", _p(review.sentence) + _list(review.cautions)),
+        ("Filters", paragraph(review.sentence) + bullets(review.cautions)),
         ("The most urgent", _drawn(review)),
         ("All filters", _lives(review)),
         ("How long they last", _survival(review)),
@@ -73,7 +85,9 @@ def _lives(review: Filters) -> str:
     ]
     rest = len(review.lives) - len(shown)
     more = f" {rest} less urgent filters are not printed." if rest else ""
-    return _p(f"Resistance in cmH2O/(L/s).{more}") + table(heads, rows, "   rrrrrrrr")
+    return paragraph(f"Resistance in cmH2O/(L/s).{more}") + table(
+        heads, rows, "   rrrrrrrr"
+    )
 
 
 def figure(value: Any, pattern: str, times: float = 1.0) -> str:

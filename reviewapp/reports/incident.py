@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from html import escape
-from typing import Any
 
 import pandas as pd
 
@@ -13,6 +12,9 @@ from engine.reviews.incident import Incident
 from engine.reviews.incident_scenario import OtherHistory
 from engine.reviews.incident_words import local, millilitres
 from reviewapp.incident_drawing import burden_svg, timeline_svg
+from reviewapp.report import Report
+from reviewapp.reports.pieces import bullets, paragraph, table
+from reviewapp.reports.sheets import incident_tables
 from reviewapp.svg import LIGHT
 
 GRADE_MARKS = {"supported": "●", "consistent": "◐", "no record": "?", "against": "○"}
@@ -25,6 +27,19 @@ ROLES = {
 CITED_ROWS = 600  # of the timeline; the count of those left out is printed
 
 
+def incident_report(
+    incident: Incident, limit: float, other: OtherHistory | None = None
+) -> Report:
+    """The incident as it leaves the app."""
+    named = incident.facts["incident_id"]
+    return Report(
+        name=f"incident-{named or 'by-hand'}",
+        title=f"Incident {named or 'entered by hand'}",
+        sections=incident_sections(incident, limit, other),
+        tables=incident_tables(incident),
+    )
+
+
 def incident_sections(
     incident: Incident, limit: float, other: OtherHistory | None = None
 ) -> list[tuple[str, str]]:
@@ -35,47 +50,10 @@ def incident_sections(
         ("Aerosol to the sensor since the last passed check", _burden(incident, other)),
         ("What could explain it", _explanations(incident.explanations)),
         ("The same exposure elsewhere", _elsewhere(incident)),
-        ("What the records do not support", _list(incident.not_supported)),
+        ("What the records do not support", bullets(incident.not_supported)),
         ("Harm and actions", _actions(incident)),
         ("Rows cited", _cited(incident)),
     ]
-
-
-def table(
-    heads: Sequence[str], rows: Sequence[Sequence[Any]], figures: str = ""
-) -> str:
-    """A table; ``figures`` has an ``r`` for each column set to the right."""
-    aligned = [
-        ' style="text-align:right;font-variant-numeric:tabular-nums"'
-        if f == "r"
-        else ""
-        for f in figures.ljust(len(heads))
-    ]
-    head = "".join(
-        f'<th scope="col"{a}>{escape(str(h))}</th>'
-        for h, a in zip(heads, aligned, strict=True)
-    )
-    body = "".join(
-        "<tr>"
-        + "".join(f"<td{a}>{_cell(v)}</td>" for v, a in zip(row, aligned, strict=True))
-        + "</tr>"
-        for row in rows
-    )
-    return f"<table><thead><tr>{head}</tr></thead><tbody>{body}</tbody></table>"
-
-
-def _cell(value: Any) -> str:
-    if value is None or (not isinstance(value, list | tuple) and pd.isna(value)):
-        return "unknown"
-    return escape(str(value))
-
-
-def _p(words: str) -> str:
-    return f"<p>{escape(words)}</p>"
-
-
-def _list(lines: Sequence[str]) -> str:
-    return "<ul>" + "".join(f"<li>{escape(line)}</li>" for line in lines) + "</ul>"
 
 
 def _facts(incident: Incident) -> str:
@@ -91,7 +69,7 @@ def _facts(incident: Incident) -> str:
         ("because", look.opened_by),
         ("Clock", incident.clock.sentence),
     ]
-    return _p(incident.sentence) + table(("", ""), rows)
+    return paragraph(incident.sentence) + table(("", ""), rows)
 
 
 def _timeline(incident: Incident, limit: float) -> str:
@@ -118,7 +96,7 @@ def _burden(incident: Incident, other: OtherHistory | None) -> str:
     ]
     body = table(("", ""), rows, " r") + burden_svg(burden, LIGHT)
     if other is not None:
-        body += _p(other.sentence)
+        body += paragraph(other.sentence)
     return body
 
 
@@ -136,7 +114,7 @@ def _explanations(explanations: Sequence[Explanation]) -> str:
         parts.append(
             f"<h3>{mark} {escape(explanation.title)}:"
             f" <em>{escape(explanation.grade)}</em></h3>"
-            f"{_p(explanation.sentence)}{asked}"
+            f"{paragraph(explanation.sentence)}{asked}"
             f"<p><b>Would be refuted by.</b> {escape(explanation.refuted_by)}"
             f" <b>Would be settled by.</b> {escape(explanation.settled_by)}</p>"
         )
@@ -157,11 +135,11 @@ def _behind(rows: Sequence[tuple[str, str]]) -> str:
 
 def _elsewhere(incident: Incident) -> str:
     exposed = incident.exposed_ventilators
-    parts = [_p(incident.windows.sentence)]
+    parts = [paragraph(incident.windows.sentence)]
     if incident.pairs.sets_used:
         pairs = incident.pairs
         parts.append(
-            _p(
+            paragraph(
                 f"Over {incident.faults_count} faults, {pairs.sets_used} differ from"
                 f" their own earlier window: exact odds ratio {pairs.ratio:.1f}"
                 f" ({pairs.low:.1f} to {pairs.high:.1f}), p {pairs.p:.3f}; the smallest"
@@ -170,7 +148,9 @@ def _elsewhere(incident: Incident) -> str:
             )
         )
     if exposed.empty:
-        parts.append(_p("No other ventilator has as many unfiltered treatments."))
+        parts.append(
+            paragraph("No other ventilator has as many unfiltered treatments.")
+        )
     else:
         heads = ("Ventilator", "Treatments", "No filter", "Unknown", "mL to sensor")
         rows = [
@@ -191,13 +171,13 @@ def _elsewhere(incident: Incident) -> str:
             tuple(row[name] for name in names)
             for row in incident.patients.to_dict("records")
         ]
-        parts.append(_p("Patients on this ventilator in the look-back:"))
+        parts.append(paragraph("Patients on this ventilator in the look-back:"))
         parts.append(table(named, people, " rrr"))
     return "".join(parts)
 
 
 def _actions(incident: Incident) -> str:
-    parts = [_p(incident.harm_sentence)]
+    parts = [paragraph(incident.harm_sentence)]
     if not incident.harm.empty:
         rated = [
             (row["role"], row["harm"], row["reason"] or "")
@@ -205,7 +185,7 @@ def _actions(incident: Incident) -> str:
         ]
         parts.append(table(("Rater's role", "Harm", "Reason"), rated))
     if incident.actions.empty:
-        parts.append(_p("No action has been decided yet."))
+        parts.append(paragraph("No action has been decided yet."))
     else:
         kept = ("text", "strength", "owner_role", "measure", "due")
         decided = [
@@ -219,7 +199,9 @@ def _actions(incident: Incident) -> str:
         tuple(row[name] for name in names)
         for row in incident.suggested_actions.to_dict("records")
     ]
-    parts.append(_p("To choose from, the strongest first; none of it is decided here:"))
+    parts.append(
+        paragraph("To choose from, the strongest first; none of it is decided here:")
+    )
     parts.append(table(("Strength", "Action", "Measured by", "Because of"), offered))
     return "".join(parts)
 
@@ -241,5 +223,5 @@ def _cited(incident: Incident) -> str:
     ]
     left_out = len(incident.timeline) - len(shown)
     more = f" The earliest {left_out} rows are not printed." if left_out else ""
-    opening = _p(f"Every row on the timeline, site time.{more}")
+    opening = paragraph(f"Every row on the timeline, site time.{more}")
     return opening + table(("When", "Lane", "What", "Row", "As logged"), rows)

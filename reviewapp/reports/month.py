@@ -8,15 +8,27 @@ from html import escape
 
 import pandas as pd
 
-from engine.reviews.figures import percent, significant
+from engine.reviews.figures import month_words, percent, significant
 from engine.reviews.month import Month
 from engine.reviews.month_journal import differences
 from engine.rules.wording import word
 from reviewapp.month_html import Marks, UnitsOf, lines_html, style
-from reviewapp.reports.incident import _list, _p, table
+from reviewapp.report import Report
+from reviewapp.reports.pieces import bullets, paragraph, table
+from reviewapp.reports.sheets import month_tables
 from reviewapp.svg import LIGHT
 
 PRINTED_ROWS = 40  # of filters and ventilators; the rest is counted
+
+
+def month_report(month: Month, units: UnitsOf, marks: Marks = ()) -> Report:
+    """The month as it leaves the app."""
+    return Report(
+        name=f"month-{month.month}",
+        title=f"Month report, {month_words(month.month)}",
+        sections=month_sections(month, units, marks),
+        tables=month_tables(month, units),
+    )
 
 
 def month_sections(
@@ -46,15 +58,19 @@ def _short(month: Month) -> str:
         ("What is least sure", month.sure),
     )
     told = "".join(f"<p><b>{t}.</b> {escape(words)}</p>" for t, words in answers)
-    asked = _list(month.to_decide) if month.to_decide else _p("Nothing asks for it.")
-    return f"{_p(month.sentence)}{told}<p><b>What to decide.</b></p>{asked}"
+    asked = (
+        bullets(month.to_decide)
+        if month.to_decide
+        else paragraph("Nothing asks for it.")
+    )
+    return f"{paragraph(month.sentence)}{told}<p><b>What to decide.</b></p>{asked}"
 
 
 def _opened(month: Month, units: UnitsOf, marks: Marks) -> str:
     """Each line to be looked at stands open, as it would on screen."""
     looked = [each for each in month.lines if each.look]
     if not looked:
-        return _p("No line stands past its start or outside its limits.")
+        return paragraph("No line stands past its start or outside its limits.")
     return "".join(
         lines_html(
             month,
@@ -78,7 +94,7 @@ def _look(month: Month) -> str:
 def filters_table(filters: pd.DataFrame) -> str:
     """Filters over or near their limit, rising, or suspected changed."""
     if filters.empty:
-        return _p("No filter in use this month asks for a look.")
+        return paragraph("No filter in use this month asks for a look.")
     shown = filters.head(PRINTED_ROWS)
     rows = [
         (
@@ -100,7 +116,7 @@ def filters_table(filters: pd.DataFrame) -> str:
 def sensors_table(sensors: pd.DataFrame) -> str:
     """Ventilators whose expiratory flow sensor asks for a look, and why."""
     if sensors.empty:
-        return _p("No ventilator asks for a look.")
+        return paragraph("No ventilator asks for a look.")
     shown = sensors.head(PRINTED_ROWS)
     rows = [
         (
@@ -120,11 +136,15 @@ def sensors_table(sensors: pd.DataFrame) -> str:
 
 def _rest(whole: pd.DataFrame, shown: pd.DataFrame) -> str:
     rest = len(whole) - len(shown)
-    return _p(f"{rest} more are not printed.") if rest else ""
+    return paragraph(f"{rest} more are not printed.") if rest else ""
 
 
 def _dose(month: Month) -> str:
-    return _p(month.dose_sentence) + forgone_table(month) + _p(month.exposure_sentence)
+    return (
+        paragraph(month.dose_sentence)
+        + forgone_table(month)
+        + paragraph(month.exposure_sentence)
+    )
 
 
 def forgone_table(month: Month) -> str:
@@ -163,12 +183,12 @@ def _confirmations(month: Month) -> str:
         for row in checked.rules.to_dict("records")
     ]
     heads = ("Rule", "Question", "Flags", "Reviewed", "Confirmed", "Dismissed")
-    return _p(checked.sentence) + table((*heads, "Share", ""), rows, "  rrrrr")
+    return paragraph(checked.sentence) + table((*heads, "Share", ""), rows, "  rrrrr")
 
 
 def _decisions(month: Month) -> str:
     if month.decisions.empty:
-        return _p("None recorded.")
+        return paragraph("None recorded.")
     rows = [
         tuple(
             str(row[name])
@@ -192,7 +212,7 @@ _DECIDED = ("indicator", "text", "strength", "owner_role", "measure", "due")
 
 def _signature(month: Month) -> str:
     if month.sign_offs.empty:
-        return _p("Not signed. Figures may change until it is.")
+        return paragraph("Not signed. Figures may change until it is.")
     lines = []
     for row in month.sign_offs.to_dict("records"):
         changed = differences(row["snapshot"], month.snapshot)
@@ -200,7 +220,7 @@ def _signature(month: Month) -> str:
         same = "Nothing has changed since." if not changed else " ".join(changed[:8])
         signed = f"{row['actor']} ({row['role']}), {row['at']:%d %B %Y %H:%M} UTC"
         lines.append(f"{signed}, on journal head {head}. {same}")
-    return _list(lines)
+    return bullets(lines)
 
 
 def _counting(month: Month) -> str:
@@ -219,7 +239,7 @@ def _counting(month: Month) -> str:
         f"Engine {stamp['engine_version']}, log {stamp['log_fingerprint']}, policy"
         f" {stamp['policy_name']} {stamp['policy_hash']}."
     )
-    return table(heads, rows) + _p(held) + _list(month.cautions)
+    return table(heads, rows) + paragraph(held) + bullets(month.cautions)
 
 
 def _share(row: dict) -> str:

@@ -7,29 +7,41 @@ from html import escape
 from engine.reviews.figures import percent
 from engine.reviews.scenario import Comparison
 from engine.rules.wording import word
-from reviewapp.reports.incident import _list, _p, table
+from reviewapp.report import Report
+from reviewapp.reports.pieces import bullets, paragraph, table
+from reviewapp.reports.sheets import scenario_tables
 from reviewapp.scenario_drawing import filters_svg, outcome_svg
 from reviewapp.svg import LIGHT
+
+
+def scenario_report(comparison: Comparison) -> Report:
+    """The comparison as it leaves the app."""
+    return Report(
+        name=f"what-if-{comparison.scenario.name}",
+        title=f"What if: {comparison.scenario.title}",
+        sections=scenario_sections(comparison),
+        tables=scenario_tables(comparison),
+    )
 
 
 def scenario_sections(comparison: Comparison) -> list[tuple[str, str]]:
     """Heading and HTML of each section, in the order they are read."""
     return [
-        ("What if", _p(comparison.sentence)),
+        ("What if", paragraph(comparison.sentence)),
         ("The change", _change(comparison)),
         ("Before and after", _outcomes(comparison)),
         ("Filters it takes", _filters(comparison)),
         ("Flags", rules_table(comparison)),
-        ("What it would not change", _list(comparison.unchanged)),
-        ("Read this with it", _list(comparison.cautions)),
+        ("What it would not change", bullets(comparison.unchanged)),
+        ("Read this with it", bullets(comparison.cautions)),
     ]
 
 
 def _change(comparison: Comparison) -> str:
     parts = []
     if comparison.scenario.note:
-        parts.append(_p(comparison.scenario.note))
-    parts.append(_p(comparison.change))
+        parts.append(paragraph(comparison.scenario.note))
+    parts.append(paragraph(comparison.change))
     if len(comparison.settings):
         rows = [
             (row["key"].replace("_", " "), row["before"], row["after"])
@@ -43,7 +55,7 @@ def _outcomes(comparison: Comparison) -> str:
     drawn = "".join(
         f"<h3>{escape(each.title)}</h3>"
         f'<div style="max-width:640px">{outcome_svg(each, LIGHT)}</div>'
-        f"{_p(each.says)}"
+        f"{paragraph(each.says)}"
         for each in comparison.outcomes
     )
     return drawn + classes_table(comparison)
@@ -68,7 +80,7 @@ def classes_table(comparison: Comparison) -> str:
 
 def _filters(comparison: Comparison) -> str:
     drawn = f'<div style="max-width:640px">{filters_svg(comparison, LIGHT)}</div>'
-    return drawn + _p(comparison.filters_sentence)
+    return drawn + paragraph(comparison.filters_sentence)
 
 
 def rules_table(comparison: Comparison, changed_only: bool = True) -> str:
@@ -79,7 +91,7 @@ def rules_table(comparison: Comparison, changed_only: bool = True) -> str:
     )
     shown = rules[moved] if changed_only else rules
     if shown.empty:
-        return _p("No rule would answer otherwise.")
+        return paragraph("No rule would answer otherwise.")
     rows = [
         (
             row["rule_id"],

@@ -12,11 +12,23 @@ from engine.reviews.sessions import Session
 from engine.reviews.topics import Example, Sheet, Topics
 from engine.reviews.wording import counted
 from engine.rules.wording import word
-from reviewapp.reports.incident import _list, _p, table
+from reviewapp.report import Report
+from reviewapp.reports.pieces import bullets, paragraph, table
+from reviewapp.reports.sheets import topic_tables
 from reviewapp.svg import LIGHT, Colours
 from reviewapp.topic_drawing import places_svg, ranking_svg, weeks_svg
 
 Draw = Callable[[Example], str]
+
+
+def topic_report(review: Topics, draw: Draw) -> Report:
+    """The handout as it leaves the app."""
+    return Report(
+        name=f"topics-{review.since}-{review.until}",
+        title="Topics",
+        sections=topic_sections(review, draw),
+        tables=topic_tables(review),
+    )
 
 
 def topic_sections(review: Topics, draw: Draw | None = None) -> list[tuple[str, str]]:
@@ -26,11 +38,11 @@ def topic_sections(review: Topics, draw: Draw | None = None) -> list[tuple[str, 
         for number, sheet in enumerate(review.sheets, start=1)
     ]
     return [
-        ("Topics", _p(review.sentence)),
+        ("Topics", paragraph(review.sentence)),
         *sheets,
         ("How they were chosen", _choice(review)),
         ("What past sessions show", sessions_html(review.sessions)),
-        ("Read this with it", _list(review.cautions)),
+        ("Read this with it", bullets(review.cautions)),
     ]
 
 
@@ -46,18 +58,18 @@ def sheet_html(
     """
     change = f"{sheet.topic.change} ({sheet.topic.change_strength})"
     parts = [
-        _p(sheet.sentence),
+        paragraph(sheet.sentence),
         f"<p><small>{escape(sheet.seen)}</small></p>",
         _two(
             _head("Where")
-            + _p(sheet.where)
+            + paragraph(sheet.where)
             + f'<div style="max-width:440px">{places_svg(sheet, colours)}</div>',
             _head("Why it matters")
-            + _p(sheet.topic.why)
+            + paragraph(sheet.topic.why)
             + _head("The system change beside the teaching")
-            + _p(change)
+            + paragraph(change)
             + _head("What the department has written down")
-            + _p(sheet.table),
+            + paragraph(sheet.table),
         ),
         _evidence(sheet, folded),
     ]
@@ -74,10 +86,10 @@ def sheet_html(
 def _evidence(sheet: Sheet, folded: bool) -> str:
     """What the rules rest on, and the works that found otherwise, side by side."""
     title = "What it rests on"
-    body = _list(sheet.evidence)
+    body = bullets(sheet.evidence)
     if sheet.against:
         title += ", and who found otherwise"
-        body = _two(body, _head("The other side") + _list(sheet.against))
+        body = _two(body, _head("The other side") + bullets(sheet.against))
     if not folded:
         return _head(title) + body
     return f"<details><summary>{escape(title)}</summary>{body}</details>"
@@ -101,16 +113,16 @@ def example_html(example: Example, draw: Draw | None = None) -> str:
     if example.instead:
         sites = " or ".join(word("site", site) for site in example.instead)
         note = f" ({example.table_note})" if example.table_note else ""
-        instead = _p(f"The department's table would have it {sites}{note}.")
+        instead = paragraph(f"The department's table would have it {sites}{note}.")
     drawn = draw(example) if draw is not None else ""
-    return _p(example.sentence) + drawn + _list(example.says) + instead
+    return paragraph(example.sentence) + drawn + bullets(example.says) + instead
 
 
 def _choice(review: Topics) -> str:
     return (
         f'<div style="max-width:640px">{ranking_svg(review, LIGHT)}</div>'
-        + _p(review.runner_up)
-        + _p(_capped(review))
+        + paragraph(review.runner_up)
+        + paragraph(_capped(review))
         + weights_table(review)
     )
 
@@ -142,14 +154,14 @@ def weights_table(review: Topics) -> str:
 def sessions_html(sessions: tuple[Session, ...], colours: Colours = LIGHT) -> str:
     """Each past session with its weeks and what they can and cannot show."""
     if not sessions:
-        return _p("No session has been recorded.")
+        return paragraph("No session has been recorded.")
     parts = []
     for each in sessions:
         parts += [
-            _p(each.sentence),
+            paragraph(each.sentence),
             weeks_svg(each, colours),
             session_table(each),
-            _list(each.cautions),
+            bullets(each.cautions),
         ]
     return "".join(parts)
 

@@ -9,10 +9,9 @@ import streamlit as st
 
 from engine.errors import UnknownId
 from engine.reviews.filters import STATE_WORDS, Filters, OneFilter
-from reviewapp import data, parts, theme
+from reviewapp import data, parts, tables, theme
 from reviewapp.filter_drawing import one_filter_svg, small_filter_svg, survival_svg
-from reviewapp.report import page
-from reviewapp.reports.filters import figure, filter_sections, share
+from reviewapp.reports.filters import figure, filter_report, share
 
 SHOWN = 12  # small drawings before "show more"
 
@@ -120,7 +119,7 @@ def _in_depth(review: Filters) -> None:
     _verdict(one)
     for line in one.cautions[: len(one.cautions) - len(review.cautions)]:
         st.caption(line)
-    _tables(one)
+    _behind(one)
 
 
 def _remember() -> None:
@@ -144,7 +143,7 @@ def _verdict(one: OneFilter) -> None:
     st.markdown(f"{words}{reason}.{ends}{a_day}{per_ml}")
 
 
-def _tables(one: OneFilter) -> None:
+def _behind(one: OneFilter) -> None:
     readings, treatments, drugs = st.tabs(
         [
             f"Readings ({len(one.readings)})",
@@ -164,7 +163,7 @@ def _tables(one: OneFilter) -> None:
                 "doubt",
             ]
         ]
-        st.dataframe(parts.labelled(shown), hide_index=True, width="stretch")
+        st.dataframe(tables.labelled(shown), hide_index=True, width="stretch")
     with treatments:
         shown = one.treatments[
             [
@@ -176,7 +175,7 @@ def _tables(one: OneFilter) -> None:
                 "captured_ml",
             ]
         ]
-        st.dataframe(parts.labelled(shown), hide_index=True, width="stretch")
+        st.dataframe(tables.labelled(shown), hide_index=True, width="stretch")
     with drugs:
         if one.drugs.empty:
             st.caption("No drug is recorded through this filter.")
@@ -247,13 +246,7 @@ def _readings_not_used(review: Filters) -> None:
 
 
 def _report(review: Filters) -> None:
-    st.download_button(
-        "Printable page",
-        data=lambda: page("Filters", data.banner(), filter_sections(review)),
-        file_name="filters.html",
-        mime="text/html",
-        on_click="ignore",
-    )
+    parts.downloads("filters", lambda: filter_report(review))
 
 
 show()

@@ -14,10 +14,9 @@ from engine.errors import EngineError
 from engine.reviews.explanations import Explanation
 from engine.reviews.incident import Incident
 from engine.reviews.incident_words import STRENGTHS, local
-from reviewapp import data, entry, parts, theme
+from reviewapp import data, entry, parts, tables, theme
 from reviewapp.incident_drawing import burden_svg, timeline_svg
-from reviewapp.report import page
-from reviewapp.reports.incident import GRADE_MARKS, ROLES, incident_sections
+from reviewapp.reports.incident import GRADE_MARKS, ROLES, incident_report
 
 BY_HAND = "A fault that is not in the log"
 
@@ -195,7 +194,7 @@ def _elsewhere(incident: Incident) -> None:
             "sensor_ml",
         ]
         st.dataframe(
-            parts.labelled(incident.exposed_ventilators[names]),
+            tables.labelled(incident.exposed_ventilators[names]),
             hide_index=True,
             width="stretch",
         )
@@ -208,7 +207,7 @@ def _elsewhere(incident: Incident) -> None:
                 "unknown_count",
             ]
             st.dataframe(
-                parts.labelled(incident.patients[names]),
+                tables.labelled(incident.patients[names]),
                 hide_index=True,
                 width="stretch",
             )
@@ -275,18 +274,11 @@ def _harm_and_actions(incident: Incident) -> None:
 
 def _sign_off(incident: Incident) -> None:
     st.subheader("Report and sign-off")
-    st.download_button(
-        "Printable report",
-        data=lambda: page(
-            f"Incident {incident.facts['incident_id'] or 'entered by hand'}",
-            data.banner(),
-            incident_sections(
-                incident, data.filter_limit(), data.other_history(incident)
-            ),
+    parts.downloads(
+        f"incident-{incident.facts['incident_id'] or 'by-hand'}",
+        lambda: incident_report(
+            incident, data.filter_limit(), data.other_history(incident)
         ),
-        file_name=f"incident-{incident.facts['incident_id'] or 'by-hand'}.html",
-        mime="text/html",
-        on_click="ignore",
     )
     if incident.facts["incident_id"] is None:
         return

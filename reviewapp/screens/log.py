@@ -8,7 +8,7 @@ import streamlit as st
 from engine.columns import BAD_ROW_CODES, RECORD_TABLES, TREATMENT, labels
 from engine.log.dictionary import dictionary, template
 from engine.reviews.incident_words import local
-from reviewapp import data, entry, parts
+from reviewapp import data, entry, parts, tables
 from reviewapp.log_drawing import unknown_svg
 
 SHOWN = 500
@@ -80,10 +80,10 @@ def _refused() -> None:
             'SELECT source, row, "table", "column", code, value, message '
             f"FROM refused LIMIT {SHOWN}"
         )
-        st.dataframe(parts.labelled(rows), hide_index=True, width="stretch")
+        st.dataframe(tables.labelled(rows), hide_index=True, width="stretch")
         st.download_button(
             "These rows as CSV",
-            data=lambda: parts.csv_of(rows),
+            data=lambda: tables.csv_of(rows),
             file_name="refused.csv",
             mime="text/csv",
             on_click="ignore",
@@ -126,7 +126,7 @@ def _clocks() -> None:
         "last measurement."
     )
     with st.expander("Every clock"):
-        st.dataframe(parts.labelled(clocks), hide_index=True, width="stretch")
+        st.dataframe(tables.labelled(clocks), hide_index=True, width="stretch")
 
 
 def _journal() -> None:

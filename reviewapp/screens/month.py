@@ -11,15 +11,14 @@ from engine.reviews.incident_words import STRENGTHS
 from engine.reviews.indicators import INDICATORS
 from engine.reviews.month import Month
 from engine.reviews.month_journal import differences
-from reviewapp import data, entry, parts, theme
+from reviewapp import data, entry, parts, tables, theme
 from reviewapp.month_html import lines_html, style
 from reviewapp.parts import address
-from reviewapp.report import page
 from reviewapp.reports.month import (
     filters_table,
     forgone_table,
     month_marks,
-    month_sections,
+    month_report,
     sensors_table,
 )
 
@@ -239,7 +238,7 @@ def _decisions(month: Month) -> None:
         st.markdown("None recorded for this month.")
     else:
         st.dataframe(
-            parts.labelled(month.decisions.drop(columns=["month", "seq"])),
+            tables.labelled(month.decisions.drop(columns=["month", "seq"])),
             hide_index=True,
             width="stretch",
         )
@@ -321,18 +320,11 @@ def _sign_off(month: Month) -> None:
 
 
 def _report(month: Month) -> None:
-    st.download_button(
-        "Printable report",
-        data=lambda: page(
-            f"Month report, {month_words(month.month)}",
-            data.banner(),
-            month_sections(
-                month, data.month_units(month.month), month_marks(data.sessions())
-            ),
+    parts.downloads(
+        f"month-{month.month}",
+        lambda: month_report(
+            month, data.month_units(month.month), month_marks(data.sessions())
         ),
-        file_name=f"month-{month.month}.html",
-        mime="text/html",
-        on_click="ignore",
     )
 
 

@@ -10,11 +10,10 @@ from engine.reviews.topic_catalogue import TOPICS
 from engine.reviews.topics import CHOICES, Sheet, Topics
 from reviewapp import data, entry, parts, theme
 from reviewapp.parts import address
-from reviewapp.report import page
 from reviewapp.reports.topics import (
     sessions_html,
     sheet_html,
-    topic_sections,
+    topic_report,
     weights_table,
 )
 from reviewapp.topic_drawing import ranking_svg
@@ -158,14 +157,9 @@ def _sessions(review: Topics) -> None:
 
 
 def _report(review: Topics) -> None:
-    st.download_button(
-        "Printable handout",
-        data=lambda: page(
-            "Topics", data.banner(), topic_sections(review, parts.example_drawing)
-        ),
-        file_name=f"topics-{review.since}-{review.until}.html",
-        mime="text/html",
-        on_click="ignore",
+    parts.downloads(
+        f"topics-{review.since}-{review.until}",
+        lambda: topic_report(review, parts.example_drawing),
     )
 
 

@@ -17,7 +17,7 @@ from engine.reviews.incident_words import local
 from engine.rules import ALL_RULES, rule_of
 from engine.rules.phrases import batch_of_one
 from engine.rules.wording import cited, is_logged, published, shown
-from reviewapp import data, entry, parts, theme
+from reviewapp import data, entry, parts, tables, theme
 from reviewapp.circuit_drawing import band, circuit_svg, drawing_of
 from reviewapp.treatment_drawing import sites_svg, split_svg
 
@@ -199,7 +199,7 @@ def _list(listed: pd.DataFrame, total: int) -> str:
     left.text_input("Find a treatment by its id", key="find_treatment", on_change=_find)
     middle.download_button(
         "Listed rows as CSV",
-        data=lambda: parts.csv_of(listed),
+        data=lambda: tables.csv_of(listed),
         file_name="treatments.csv",
         mime="text/csv",
         on_click="ignore",

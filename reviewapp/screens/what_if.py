@@ -13,8 +13,7 @@ from engine.reviews.figures import month_words
 from engine.reviews.scenario import Comparison, ready_scenarios, scenario_record
 from engine.rules.wording import label_of, word
 from reviewapp import data, entry, parts, theme
-from reviewapp.report import page
-from reviewapp.reports.scenario import classes_table, rules_table, scenario_sections
+from reviewapp.reports.scenario import classes_table, rules_table, scenario_report
 from reviewapp.scenario_drawing import filters_svg, outcome_svg
 
 OWN = "Compose one"
@@ -202,16 +201,8 @@ def _flags(comparison: Comparison) -> None:
 
 
 def _keep_it(comparison: Comparison) -> None:
-    st.download_button(
-        "Printable report",
-        data=lambda: page(
-            f"What if: {comparison.scenario.title}",
-            data.banner(),
-            scenario_sections(comparison),
-        ),
-        file_name=f"what-if-{comparison.scenario.name}.html",
-        mime="text/html",
-        on_click="ignore",
+    parts.downloads(
+        f"what-if-{comparison.scenario.name}", lambda: scenario_report(comparison)
     )
     with st.expander("Keep this scenario"), entry.form("scenario"):
         reason = st.text_input("Why it is kept")

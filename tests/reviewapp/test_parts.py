@@ -3,7 +3,7 @@
 import pandas as pd
 import pytest
 
-from reviewapp import parts
+from reviewapp import parts, tables
 from reviewapp.svg import DARK, LIGHT
 
 TEXT, MARKS = ("ink", "faint", "aerosol", "fired", "unknown"), ("aerosol", "fired")
@@ -48,7 +48,7 @@ def test_each_answer_has_a_mark_of_its_own_shape_and_its_words():
 
 def test_a_formula_in_a_table_is_made_text_and_numbers_stay_numbers():
     table = pd.DataFrame({"note": ["=1+1", "-hold", "fine"], "value": [-3.2, 1.0, 2.0]})
-    lines = parts.csv_of(table).decode("utf-8-sig").splitlines()
+    lines = tables.csv_of(table).decode("utf-8-sig").splitlines()
     assert lines == ["note,value", "'=1+1,-3.2", "'-hold,1.0", "fine,2.0"]
 
 

@@ -1,0 +1,1 @@
+"""Reports as files other than HTML: the same sections, set as PDF or as a workbook."""

@@ -1,0 +1,101 @@
+"""A report as a tagged PDF (PDF/UA-1), set without a browser."""
+
+from __future__ import annotations
+
+import json
+from importlib import resources
+from typing import Any
+
+from engine.errors import SourceUnreadable
+from reviewapp.paper.blocks import Block, blocks_of, words_in
+from reviewapp.report import CAUTION, CONFIDENTIAL, Banner, Sections
+from reviewapp.svg import FONT
+
+NOT_INSTALLED = (
+    "a PDF needs the extra package: install aerosol-treatment-review[pdf], or write"
+    " .html and print that page"
+)
+_FONTS = "Noto Sans, Liberation Sans, DejaVu Sans, Libertinus Serif"
+_LONGEST_WORDS = 34  # of a cell, as far as its column's width is concerned
+_SHORTEST_WORDS = 7
+_NARROW = 16  # a column no cell of which is wider keeps to the width it needs
+
+
+def is_installed() -> bool:
+    """Whether a PDF can be made here."""
+    try:
+        import typst  # noqa: F401
+    except ImportError:
+        return False
+    return True
+
+
+def pdf(title: str, banner: Banner, sections: Sections) -> bytes:
+    """The whole document.
+
+    Raises   SourceUnreadable if the extra package is not installed.
+    """
+    if not is_installed():
+        raise SourceUnreadable(NOT_INSTALLED)
+    import typst
+
+    page = {
+        "title": title,
+        "confidential": CONFIDENTIAL,
+        "caution": CAUTION,
+        "footer": f"{title}. Findings need clinical confirmation. Engine "
+        f"{banner.engine_version}, made {banner.made_at} UTC.",
+        "stamp": list(banner.lines),
+        "narrow": _NARROW,
+        "sections": [
+            {"head": head, "blocks": [_set(each) for each in blocks_of(body)]}
+            for head, body in sections
+        ],
+    }
+    template = resources.files("reviewapp.paper").joinpath("report.typ").read_bytes()
+    made: Any = typst.compile(
+        template,
+        format="pdf",
+        sys_inputs={"page": json.dumps(page)},
+        pdf_standards="ua-1",
+    )
+    return bytes(made)
+
+
+def _set(block: Block) -> Block:
+    """The block with what the template asks: fonts it can find, widths of columns."""
+    kind = block["kind"]
+    if kind == "drawing":
+        svg = block["svg"].replace(FONT.replace("'", "&#x27;"), _FONTS)
+        return {**block, "svg": svg}
+    if kind == "list":
+        return {**block, "items": [[_set(b) for b in item] for item in block["items"]]}
+    if kind == "row":
+        return {**block, "cells": [[_set(b) for b in cell] for cell in block["cells"]]}
+    if kind == "table":
+        return _set_table(block)
+    return block
+
+
+def _set_table(block: Block) -> Block:
+    heads = [[_set(b) for b in cell] for cell in block["heads"]]
+    rows = [
+        row if isinstance(row, dict) else [[_set(b) for b in cell] for cell in row]
+        for row in block["rows"]
+    ]
+    listed = [heads, *(row for row in rows if isinstance(row, list))]
+    widths = [
+        max(_width(row[i]) for row in listed if i < len(row)) for i in range(len(heads))
+    ]
+    parts = block["parts"] or widths
+    shares = [part / sum(parts) for part in parts]
+    return {**block, "heads": heads, "rows": rows, "widths": widths, "shares": shares}
+
+
+def _width(cell: list[Block]) -> float:
+    """About how wide a column must be for this cell, in characters."""
+    if any(block["kind"] == "drawing" for block in cell):
+        return float(_LONGEST_WORDS)
+    said = words_in(cell)
+    longest = max((len(word) for word in said.split()), default=0)
+    return float(max(_SHORTEST_WORDS, longest, min(len(said), _LONGEST_WORDS)))
