@@ -12,8 +12,9 @@ import streamlit as st
 
 from engine.columns import ANSWERS
 from engine.reviews.topics import Example
-from reviewapp import data, svg, theme
-from reviewapp.circuit_drawing import circuit_svg, drawing_of
+from reviewapp import data, theme
+from reviewapp.drawings import svg
+from reviewapp.drawings.circuit import circuit_svg, drawing_of
 from reviewapp.paper.files import ENDINGS, file_of
 from reviewapp.paper.pdf import is_installed as pdf_is_installed
 from reviewapp.report import Report

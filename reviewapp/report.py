@@ -10,7 +10,7 @@ from html import escape
 import pandas as pd
 
 from engine.replay import Replay
-from reviewapp.svg import LIGHT
+from reviewapp.drawings.svg import LIGHT
 
 CONFIDENTIAL = (
     "CONFIDENTIAL - quality review. May be protected under local law. Do not copy, "

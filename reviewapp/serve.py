@@ -10,7 +10,7 @@ import os
 import sys
 from pathlib import Path
 
-from reviewapp.svg import DARK, LIGHT, Colours
+from reviewapp.drawings.svg import DARK, LIGHT, Colours
 
 LOG_VARIABLE = "AEROSOL_REVIEW_LOG"
 APP = Path(__file__).with_name("app.py")

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import streamlit as st
 
-from reviewapp.svg import DARK, LIGHT, Colours
+from reviewapp.drawings.svg import DARK, LIGHT, Colours
 
 # What Streamlit is told of the palette, by mode; option names are its own.
 OPTIONS: dict[str, Colours] = {"light": LIGHT, "dark": DARK}

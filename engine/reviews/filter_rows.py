@@ -42,6 +42,15 @@ WHERE o.filter_id = $filter_id
 ORDER BY o.started_at, o.treatment_id
 """
 
+
+def _most_often(column: str) -> str:
+    """The word logged most often; unknown where two come equally often."""
+    counts = f"histogram({column}::VARCHAR)"
+    most = f"list_max(map_values({counts}))"
+    at_most = f"list_filter(map_entries({counts}), lambda e: e.value = {most})"
+    return f"CASE WHEN len({at_most}) = 1 THEN ({at_most})[1].key END"
+
+
 # Each life with what was treated through it, and what about it cannot be trusted.
 LIVES = f"""
 WITH treated AS (
@@ -50,7 +59,8 @@ WITH treated AS (
          sum(captured_ml) AS captured_ml,
          count(*) FILTER (captured_ml IS NULL) AS captured_unknown_count,
          count(*) FILTER (humid IS NULL) AS humid_unknown_count,
-         mode(drug_class) AS drug_class, mode(humidification) AS humidification,
+         {_most_often("drug_class")} AS drug_class,
+         {_most_often("humidification")} AS humidification,
          bool_or(o.ventilator_token <> u.ventilator_token) AS elsewhere
   FROM ({_ON_FILTER}) o JOIN filter_use u USING (filter_id) GROUP BY filter_id
 ),

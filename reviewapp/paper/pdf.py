@@ -7,9 +7,9 @@ from importlib import resources
 from typing import Any
 
 from engine.errors import SourceUnreadable
+from reviewapp.drawings.svg import FONT
 from reviewapp.paper.blocks import Block, blocks_of, words_in
 from reviewapp.report import CAUTION, CONFIDENTIAL, Banner, Sections
-from reviewapp.svg import FONT
 
 NOT_INSTALLED = (
     "a PDF needs the extra package: install aerosol-treatment-review[pdf], or write"

@@ -7,11 +7,11 @@ from typing import Any
 import pandas as pd
 
 from engine.reviews.filters import STATE_WORDS, Filters
-from reviewapp.filter_drawing import small_filter_svg, survival_svg
+from reviewapp.drawings.filter import small_filter_svg, survival_svg
+from reviewapp.drawings.svg import LIGHT
 from reviewapp.report import Report
 from reviewapp.reports.pieces import bullets, paragraph, table
 from reviewapp.reports.sheets import filter_tables
-from reviewapp.svg import LIGHT
 
 PRINTED_FILTERS = 60  # rows of the table; the most urgent come first
 DRAWN_FILTERS = 12

@@ -11,11 +11,11 @@ from engine.reviews.explanations import Explanation
 from engine.reviews.incident import Incident
 from engine.reviews.incident_scenario import OtherHistory
 from engine.reviews.incident_words import local, millilitres
-from reviewapp.incident_drawing import burden_svg, timeline_svg
+from reviewapp.drawings.incident import burden_svg, timeline_svg
+from reviewapp.drawings.svg import LIGHT
 from reviewapp.report import Report
 from reviewapp.reports.pieces import bullets, paragraph, table
 from reviewapp.reports.sheets import incident_tables
-from reviewapp.svg import LIGHT
 
 GRADE_MARKS = {"supported": "●", "consistent": "◐", "no record": "?", "against": "○"}
 ROLES = {

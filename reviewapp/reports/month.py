@@ -12,11 +12,11 @@ from engine.reviews.figures import month_words, percent, significant
 from engine.reviews.month import Month
 from engine.reviews.month_journal import differences
 from engine.rules.wording import word
-from reviewapp.month_html import Marks, UnitsOf, lines_html, style
+from reviewapp.drawings.month_lines import Marks, UnitsOf, lines_html, style
+from reviewapp.drawings.svg import LIGHT
 from reviewapp.report import Report
 from reviewapp.reports.pieces import bullets, paragraph, table
 from reviewapp.reports.sheets import month_tables
-from reviewapp.svg import LIGHT
 
 PRINTED_ROWS = 40  # of filters and ventilators; the rest is counted
 

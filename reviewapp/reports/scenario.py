@@ -7,11 +7,11 @@ from html import escape
 from engine.reviews.figures import percent
 from engine.reviews.scenario import Comparison
 from engine.rules.wording import word
+from reviewapp.drawings.scenario import filters_svg, outcome_svg
+from reviewapp.drawings.svg import LIGHT
 from reviewapp.report import Report
 from reviewapp.reports.pieces import bullets, paragraph, table
 from reviewapp.reports.sheets import scenario_tables
-from reviewapp.scenario_drawing import filters_svg, outcome_svg
-from reviewapp.svg import LIGHT
 
 
 def scenario_report(comparison: Comparison) -> Report:

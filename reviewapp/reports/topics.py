@@ -12,11 +12,11 @@ from engine.reviews.sessions import Session
 from engine.reviews.topics import Example, Sheet, Topics
 from engine.reviews.wording import counted
 from engine.rules.wording import word
+from reviewapp.drawings.svg import LIGHT, Colours
+from reviewapp.drawings.topic import places_svg, ranking_svg, weeks_svg
 from reviewapp.report import Report
 from reviewapp.reports.pieces import bullets, paragraph, table
 from reviewapp.reports.sheets import topic_tables
-from reviewapp.svg import LIGHT, Colours
-from reviewapp.topic_drawing import places_svg, ranking_svg, weeks_svg
 
 Draw = Callable[[Example], str]
 

@@ -20,7 +20,8 @@ from engine.reviews.month_units import every_units
 from engine.reviews.scenario import compare_scenarios
 from engine.reviews.sessions import sessions_of
 from engine.reviews.topics import Example, review_topics
-from reviewapp.circuit_drawing import circuit_svg, drawing_of
+from reviewapp.drawings.circuit import circuit_svg, drawing_of
+from reviewapp.drawings.svg import LIGHT
 from reviewapp.paper.files import check_ending, file_of
 from reviewapp.report import Report, banner_of
 from reviewapp.reports.filters import filter_report
@@ -28,7 +29,6 @@ from reviewapp.reports.incident import incident_report
 from reviewapp.reports.month import month_marks, month_report
 from reviewapp.reports.scenario import scenario_report
 from reviewapp.reports.topics import topic_report
-from reviewapp.svg import LIGHT
 
 
 def write_report(

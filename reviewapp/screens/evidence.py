@@ -15,7 +15,7 @@ from engine.physics.validation import strict_agreement, validation_table
 from engine.rules import ALL_RULES, FAMILIES
 from engine.rules.wording import cited, published
 from reviewapp import parts, theme
-from reviewapp.bench_drawing import bench_svg
+from reviewapp.drawings.bench import bench_svg
 
 STRENGTHS = {
     "unanimous": "sources agree",

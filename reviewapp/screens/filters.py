@@ -10,7 +10,7 @@ import streamlit as st
 from engine.errors import UnknownId
 from engine.reviews.filters import STATE_WORDS, Filters, OneFilter
 from reviewapp import data, parts, tables, theme
-from reviewapp.filter_drawing import one_filter_svg, small_filter_svg, survival_svg
+from reviewapp.drawings.filter import one_filter_svg, small_filter_svg, survival_svg
 from reviewapp.reports.filters import figure, filter_report, share
 
 SHOWN = 12  # small drawings before "show more"

@@ -15,7 +15,7 @@ from engine.reviews.explanations import Explanation
 from engine.reviews.incident import Incident
 from engine.reviews.incident_words import STRENGTHS, local
 from reviewapp import data, entry, parts, tables, theme
-from reviewapp.incident_drawing import burden_svg, timeline_svg
+from reviewapp.drawings.incident import burden_svg, timeline_svg
 from reviewapp.reports.incident import GRADE_MARKS, ROLES, incident_report
 
 BY_HAND = "A fault that is not in the log"

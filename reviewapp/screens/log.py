@@ -9,7 +9,7 @@ from engine.columns import BAD_ROW_CODES, RECORD_TABLES, TREATMENT, labels
 from engine.log.dictionary import dictionary, template
 from engine.reviews.incident_words import local
 from reviewapp import data, entry, parts, tables
-from reviewapp.log_drawing import unknown_svg
+from reviewapp.drawings.log import unknown_svg
 
 SHOWN = 500
 

@@ -12,7 +12,7 @@ from engine.reviews.indicators import INDICATORS
 from engine.reviews.month import Month
 from engine.reviews.month_journal import differences
 from reviewapp import data, entry, parts, tables, theme
-from reviewapp.month_html import lines_html, style
+from reviewapp.drawings.month_lines import lines_html, style
 from reviewapp.parts import address
 from reviewapp.reports.month import (
     filters_table,

@@ -9,6 +9,7 @@ from engine.reviews.figures import month_words
 from engine.reviews.topic_catalogue import TOPICS
 from engine.reviews.topics import CHOICES, Sheet, Topics
 from reviewapp import data, entry, parts, theme
+from reviewapp.drawings.topic import ranking_svg
 from reviewapp.parts import address
 from reviewapp.reports.topics import (
     sessions_html,
@@ -16,7 +17,6 @@ from reviewapp.reports.topics import (
     topic_report,
     weights_table,
 )
-from reviewapp.topic_drawing import ranking_svg
 
 WHOLE = "whole department"
 

@@ -18,8 +18,8 @@ from engine.rules import ALL_RULES, rule_of
 from engine.rules.phrases import batch_of_one
 from engine.rules.wording import cited, is_logged, published, shown
 from reviewapp import data, entry, parts, tables, theme
-from reviewapp.circuit_drawing import band, circuit_svg, drawing_of
-from reviewapp.treatment_drawing import sites_svg, split_svg
+from reviewapp.drawings.circuit import band, circuit_svg, drawing_of
+from reviewapp.drawings.treatment import sites_svg, split_svg
 
 SHOWN = 200
 ANY = "any"

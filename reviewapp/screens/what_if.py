@@ -13,8 +13,8 @@ from engine.reviews.figures import month_words
 from engine.reviews.scenario import Comparison, ready_scenarios, scenario_record
 from engine.rules.wording import label_of, word
 from reviewapp import data, entry, parts, theme
+from reviewapp.drawings.scenario import filters_svg, outcome_svg
 from reviewapp.reports.scenario import classes_table, rules_table, scenario_report
-from reviewapp.scenario_drawing import filters_svg, outcome_svg
 
 OWN = "Compose one"
 WRITTEN = "Paste one as TOML"

@@ -10,8 +10,8 @@ from engine.batch import from_values
 from engine.columns import FRACTIONS, words_of
 from engine.physics.balance import alternatives, balance
 from engine.policy import load_policy
-from reviewapp.circuit_drawing import SCALE, circuit_svg, drawing_of
-from reviewapp.svg import DARK, LIGHT
+from reviewapp.drawings.circuit import SCALE, circuit_svg, drawing_of
+from reviewapp.drawings.svg import DARK, LIGHT
 
 SETUP = {
     "generator": "vibrating_mesh",

@@ -4,7 +4,7 @@ import pandas as pd
 import pytest
 
 from reviewapp import parts, tables
-from reviewapp.svg import DARK, LIGHT
+from reviewapp.drawings.svg import DARK, LIGHT
 
 TEXT, MARKS = ("ink", "faint", "aerosol", "fired", "unknown"), ("aerosol", "fired")
 

@@ -18,11 +18,11 @@ from engine.reviews.month import review_month
 from engine.reviews.month_units import every_units
 from engine.reviews.scenario import compare_scenarios, find_scenario
 from engine.reviews.topics import review_topics
-from reviewapp.month_html import address, lines_html
+from reviewapp.drawings.month_lines import address, lines_html
+from reviewapp.drawings.svg import DARK, LIGHT
 from reviewapp.reports.month import month_sections
 from reviewapp.reports.scenario import scenario_sections
 from reviewapp.reports.topics import topic_sections
-from reviewapp.svg import DARK, LIGHT
 
 _made = Path(__file__).parent.parent / "engine" / "reviews" / "made_month.py"
 _spec = importlib.util.spec_from_file_location("made_month", _made)

@@ -19,7 +19,15 @@ from engine.policy import Policy
 from engine.rules import placement
 from engine.rules.phrases import batch_of_one
 from engine.rules.wording import is_logged, shown, word
-from reviewapp.svg import Colours, circle, drawing, hatching, line, rectangle, text
+from reviewapp.drawings.svg import (
+    Colours,
+    circle,
+    drawing,
+    hatching,
+    line,
+    rectangle,
+    text,
+)
 
 WIDTH, HEIGHT = 1120.0, 452.0
 SCALE = 66.0  # width of a ribbon that carries the whole nominal dose

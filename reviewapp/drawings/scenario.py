@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from engine.reviews.scenario import Comparison, Outcome, apart
-from reviewapp.month_drawing import ticks
-from reviewapp.svg import Colours, circle, drawing, line, path, rectangle, text
+from reviewapp.drawings.month import ticks
+from reviewapp.drawings.svg import Colours, circle, drawing, line, path, rectangle, text
 
 WIDTH = 620.0
 

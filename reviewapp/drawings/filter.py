@@ -10,7 +10,7 @@ from typing import Any
 import pandas as pd
 
 from engine.reviews.filters import STATE_WORDS, Filters, OneFilter
-from reviewapp.svg import (
+from reviewapp.drawings.svg import (
     Colours,
     circle,
     drawing,

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from reviewapp import theme
-from reviewapp.svg import drawing, hatching, rectangle, text
+from reviewapp.drawings.svg import drawing, hatching, rectangle, text
 
 ROW = 18.0
 

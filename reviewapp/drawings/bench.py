@@ -6,7 +6,7 @@ import math
 
 import pandas as pd
 
-from reviewapp.svg import Colours, circle, drawing, line, rectangle, text
+from reviewapp.drawings.svg import Colours, circle, drawing, line, rectangle, text
 
 LOWEST, HIGHEST = 0.005, 0.8
 

@@ -10,7 +10,7 @@ import pandas as pd
 
 from engine.reviews.incident import Burden, Incident
 from engine.reviews.incident_words import local, millilitres
-from reviewapp.svg import (
+from reviewapp.drawings.svg import (
     Colours,
     circle,
     drawing,

@@ -10,8 +10,8 @@ import numpy as np
 from engine.reviews.sessions import Session
 from engine.reviews.topics import SHIFTS, Sheet, Topics
 from engine.stats.series import Segmented
-from reviewapp.month_drawing import ticks
-from reviewapp.svg import (
+from reviewapp.drawings.month import ticks
+from reviewapp.drawings.svg import (
     Colours,
     circle,
     drawing,

@@ -15,9 +15,9 @@ from engine.reviews.month import Month
 from engine.reviews.month_lines import Line
 from engine.reviews.month_units import Units
 from engine.stats.cusum import ShareCusum
-from reviewapp.month_drawing import interval_bar_svg, run_chart_svg, spark_svg
-from reviewapp.svg import Colours
-from reviewapp.units_drawing import funnel_svg, units_svg
+from reviewapp.drawings.month import interval_bar_svg, run_chart_svg, spark_svg
+from reviewapp.drawings.svg import Colours
+from reviewapp.drawings.units import funnel_svg, units_svg
 
 UnitsOf = Mapping[str, Units]
 Marks = Sequence[tuple[str, str]]

@@ -10,8 +10,8 @@ import numpy as np
 import pandas as pd
 
 from engine.reviews.month_units import Units
-from reviewapp.month_drawing import ticks
-from reviewapp.svg import (
+from reviewapp.drawings.month import ticks
+from reviewapp.drawings.svg import (
     Colours,
     circle,
     drawing,

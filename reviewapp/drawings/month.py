@@ -11,7 +11,7 @@ import pandas as pd
 
 from engine.reviews.figures import month_words, significant
 from engine.reviews.month_lines import Line
-from reviewapp.svg import (
+from reviewapp.drawings.svg import (
     Colours,
     circle,
     drawing,

@@ -8,8 +8,8 @@ from typing import Any
 from engine.columns import CHOICE_SITES
 from engine.physics.picture import SplitPicture
 from engine.rules.wording import is_logged, word
-from reviewapp.circuit_drawing import band
-from reviewapp.svg import (
+from reviewapp.drawings.circuit import band
+from reviewapp.drawings.svg import (
     Colours,
     circle,
     drawing,
