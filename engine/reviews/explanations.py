@@ -187,6 +187,7 @@ def _aerosol_film(e: Evidence) -> list[Condition]:
     if e.drifting and e.drift_started_at is not None and not e.drift_sudden:
         first = e.first_unfiltered_at
         slow_after = first is not None and e.drift_started_at >= first
+    many = len(e.absent) >= e.many_unfiltered_count
     return [
         Condition(
             role="needed",
@@ -196,6 +197,15 @@ def _aerosol_film(e: Evidence) -> list[Condition]:
             " none was given",
             holds=reached,
             rows=e.absent or e.unknown,
+        ),
+        # A few unfiltered treatments alone are found on most ventilators.
+        Condition(
+            role="needed",
+            text="the volume ratio drifted, or unfiltered treatments reached the"
+            " department's limit",
+            otherwise="the volume ratio kept its level",
+            holds=many or e.drifting,
+            rows=e.drift_rows if e.drifting else e.absent,
         ),
         Condition(
             role="against",
@@ -218,7 +228,7 @@ def _aerosol_film(e: Evidence) -> list[Condition]:
         Condition(
             role="also",
             text="as many unfiltered treatments as the department's limit, or more",
-            holds=len(e.absent) >= e.many_unfiltered_count or None,
+            holds=many or None,
             rows=e.absent,
         ),
         Condition(
@@ -270,12 +280,13 @@ def _condensate(e: Evidence) -> list[Condition]:
 
 
 def _filter_loading(e: Evidence) -> list[Condition]:
-    loaded = {"over_limit": True, "near_limit": True, "rising": True, "steady": False}
+    loaded = {"over_limit": True, "near_limit": True, "rising": False, "steady": False}
+    below = "rising but below" if e.filter_state == "rising" else "steady and below"
     return [
         Condition(
             role="needed",
-            text="the filter in use was rising, near or over its limit",
-            otherwise="the filter in use was steady and below its limit",
+            text="the filter in use was near or over its limit",
+            otherwise=f"the filter in use was {below} its limit at its last reading",
             holds=loaded.get(e.filter_state or ""),
             rows=e.filter_rows,
         ),

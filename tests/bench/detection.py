@@ -316,7 +316,7 @@ ASKED: tuple[tuple[str, str, str, str], ...] = (
         "faults that leave no record: nothing called consistent",
         "unrecorded none",
         "unrecorded",
-        "",
+        ">= 0.80",
     ),
     (
         "film faults: start of the drift within 3 days",

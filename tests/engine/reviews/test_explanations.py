@@ -125,7 +125,10 @@ def test_what_moves_the_film(changed, grade):
             "condensate",
             CONSISTENT,
         ),
-        ({"filter_state": "rising"}, "filter_loading", CONSISTENT),
+        ({"filter_state": "near_limit"}, "filter_loading", CONSISTENT),
+        ({"filter_state": "rising"}, "filter_loading", AGAINST),
+        # A few unfiltered treatments, and no volume was ever written down.
+        ({"absent": UNFILTERED[:3], "drifting": None}, "aerosol_film", NO_RECORD),
         ({"filter_state": "steady"}, "filter_loading", AGAINST),
         ({"filter_state": "too_few_readings"}, "filter_loading", NO_RECORD),
         ({"gas_running": True}, "external_gas", CONSISTENT),
