@@ -35,6 +35,8 @@ h1, h2, h3 {{ letter-spacing: -0.01em; }}
   margin: 0.2rem 0 0.4rem; }}
 .stMain p.caution {{ font-size: 0.84rem; color: {shown["faint"]}; max-width: 62rem;
   border-left: 3px solid {shown["fired"]}; padding-left: 0.7rem; margin: 0 0 0.6rem; }}
+[data-testid="stCaptionContainer"], [data-testid="stCaptionContainer"] p {{
+  color: {shown["faint"]}; opacity: 1; }}
 .nothing {{ border: 1px dashed {shown["unknown"]}; border-radius: 6px;
   padding: 0.9rem 1.1rem; margin: 0.6rem 0; }}
 .nothing b {{ display: block; margin-bottom: 0.2rem; }}
