@@ -44,5 +44,9 @@ class JournalBroken(EngineError):
     """A journal entry was altered, removed or reordered."""
 
 
+class SharingRefused(EngineError):
+    """A copy for sharing would still name a device, a person or a day."""
+
+
 class EntryRefused(EngineError):
     """A journal entry is not written: unknown action or verdict, no actor, too long."""

@@ -83,10 +83,15 @@ def _parser() -> argparse.ArgumentParser:
         "kind", choices=("month", "topics", "incident", "filters", "scenario")
     )
     one.add_argument("log", type=Path, metavar="LOG")
-    one.add_argument("--out", type=Path, required=True, metavar="FILE.html")
+    one.add_argument("--out", type=Path, required=True, metavar="FILE.html|.pdf|.xlsx")
     one.add_argument("--month", metavar="YYYY-MM", help="default: the last whole month")
     one.add_argument("--incident", metavar="ID")
     one.add_argument("--journal", type=Path, metavar="FILE")
+    one.add_argument(
+        "--shared",
+        action="store_true",
+        help="a copy without dates, devices, patients and small groups",
+    )
     _judged(one)
 
     add("verify", _verify, "published values against the engine, a line each")
@@ -193,6 +198,7 @@ def _report(chosen: argparse.Namespace) -> None:
         month=chosen.month,
         incident_id=chosen.incident,
         journal=chosen.journal,
+        shared=chosen.shared,
         made_at=datetime.now(UTC).replace(tzinfo=None),
         progress=_progress(),
     )

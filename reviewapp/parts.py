@@ -18,6 +18,7 @@ from reviewapp.drawings.circuit import circuit_svg, drawing_of
 from reviewapp.paper.files import ENDINGS, file_of
 from reviewapp.paper.pdf import is_installed as pdf_is_installed
 from reviewapp.report import Report
+from reviewapp.reports.shared import shared_banner
 
 CAUTION = (
     "Needs clinical confirmation. Local policy and licensed practice decide. Doses are "
@@ -90,15 +91,34 @@ def legend() -> None:
     )
 
 
-def downloads(name: str, make: Callable[[], Report]) -> None:
-    """The report as files; each is made when it is asked for."""
+def downloads(
+    name: str,
+    make: Callable[[], Report],
+    make_shared: Callable[[], Report] | None = None,
+) -> None:
+    """The report as files; each is made when it is asked for.
+
+    ``make_shared``   its form for sharing, where there is one
+    """
+    if make_shared and st.toggle(
+        "Copy for sharing: no dates, devices, patients or small groups",
+        key=f"share_{name}",
+    ):
+        _files(f"{name.split('-')[0]}-shared", make_shared, shared=True)
+        return
+    _files(name, make)
+    if make_shared is None:
+        st.caption("It names devices and days: there is no copy for sharing.")
+
+
+def _files(name: str, make: Callable[[], Report], shared: bool = False) -> None:
     endings = [e for e in ENDINGS if e != ".pdf" or pdf_is_installed()]
     places = st.columns([1] * len(endings) + [2])
     for place, ending in zip(places, endings, strict=False):
         words, media = ENDINGS[ending]
         place.download_button(
             words,
-            data=partial(_file, make, ending),
+            data=partial(_file, make, ending, shared),
             file_name=f"{name}{ending}",
             mime=media,
             on_click="ignore",
@@ -108,8 +128,9 @@ def downloads(name: str, make: Callable[[], Report]) -> None:
         st.caption("A PDF needs the extra package named in the README.")
 
 
-def _file(make: Callable[[], Report], ending: str) -> bytes:
-    return file_of(make(), data.banner(), ending)
+def _file(make: Callable[[], Report], ending: str, shared: bool) -> bytes:
+    banner = data.banner()
+    return file_of(make(), shared_banner(banner) if shared else banner, ending)
 
 
 def example_drawing(example: Example) -> str:

@@ -6,7 +6,7 @@ from collections.abc import Callable
 from datetime import datetime
 from pathlib import Path
 
-from engine.errors import ScenarioInvalid, UnknownId
+from engine.errors import ScenarioInvalid, SharingRefused, UnknownId
 from engine.journal import Journal, open_journal
 from engine.log import open_log
 from engine.policy import load_policy
@@ -15,9 +15,9 @@ from engine.replay.run import Progress
 from engine.reviews.filters import review_filters
 from engine.reviews.incident import incidents, review_incident
 from engine.reviews.incident_scenario import other_history
-from engine.reviews.month import last_whole_month, review_month
-from engine.reviews.month_units import every_units
-from engine.reviews.scenario import compare_scenarios
+from engine.reviews.month import Month, last_whole_month, review_month
+from engine.reviews.month_units import Units, every_units
+from engine.reviews.scenario import Comparison, compare_scenarios
 from engine.reviews.sessions import sessions_of
 from engine.reviews.topics import Example, review_topics
 from reviewapp.drawings.circuit import circuit_svg, drawing_of
@@ -28,7 +28,13 @@ from reviewapp.reports.filters import filter_report
 from reviewapp.reports.incident import incident_report
 from reviewapp.reports.month import month_marks, month_report
 from reviewapp.reports.scenario import scenario_report
-from reviewapp.reports.topics import topic_report
+from reviewapp.reports.shared import (
+    shared_banner,
+    shared_month_report,
+    shared_scenario_report,
+    shared_topic_report,
+)
+from reviewapp.reports.topics import Draw, topic_report
 
 
 def write_report(
@@ -42,24 +48,34 @@ def write_report(
     month: str | None = None,
     incident_id: str | None = None,
     journal: Path | None = None,
+    shared: bool = False,
     progress: Progress | None = None,
 ) -> None:
     """Writes the report of that kind.
+
+    ``shared``  a copy without dates, devices, patients and small groups
 
     Raises   an EngineError in one line: a log, policy, scenario, month or incident that
              is not there, or an ending of ``out`` that no report has.
     """
     ending = out.suffix.lower()
     check_ending(ending)
+    if shared and kind not in _SHARED:
+        raise SharingRefused(
+            f"a report on {kind} names devices and days: there is no copy for sharing;"
+            f" there is one of {', '.join(_SHARED)}"
+        )
     beside = log_path.with_name(f"{log_path.name}.journal.jsonl")
     book = open_journal(journal or beside)
     with open_log(log_path) as log:
         done = replay(log, load_policy(policy), _as_facts(kind, scenario), progress)
         try:
-            report = _REPORTS[kind](
+            report = (_SHARED if shared else _REPORTS)[kind](
                 done, book, month=month, incident_id=incident_id, scenario=scenario
             )
             banner = banner_of(done, log_path.name, made_at, book.head)
+            if shared:
+                banner = shared_banner(banner)
         finally:
             done.close()
     out.write_bytes(file_of(report, banner, ending))
@@ -71,20 +87,37 @@ def _as_facts(kind: str, scenario: Scenario | None) -> Scenario | None:
 
 
 def _month(done: Replay, book: Journal, **asked) -> Report:
-    name = asked["month"] or last_whole_month(done)
-    review = review_month(done, name, book)
-    marks = month_marks(sessions_of(done, book))
-    return month_report(review, every_units(done, name), marks)
+    review, units = _month_asked(done, book, asked["month"])
+    return month_report(review, units, month_marks(sessions_of(done, book)))
+
+
+def _shared_month(done: Replay, book: Journal, **asked) -> Report:
+    return shared_month_report(done, *_month_asked(done, book, asked["month"]))
+
+
+def _month_asked(
+    done: Replay, book: Journal, month: str | None
+) -> tuple[Month, dict[str, Units]]:
+    name = month or last_whole_month(done)
+    return review_month(done, name, book), every_units(done, name)
 
 
 def _topics(done: Replay, book: Journal, **asked) -> Report:
     month = asked["month"]
-    review = review_topics(done, month, month, book)
+    return topic_report(review_topics(done, month, month, book), _drawn(done))
 
+
+def _shared_topics(done: Replay, book: Journal, **asked) -> Report:
+    month = asked["month"]
+    review = review_topics(done, month, month, book)
+    return shared_topic_report(done, review, _drawn(done))
+
+
+def _drawn(done: Replay) -> Draw:
     def draw(example: Example) -> str:
         return circuit_svg(drawing_of(example.row, done.policy), LIGHT, compact=True)
 
-    return topic_report(review, draw)
+    return draw
 
 
 def _filters(done: Replay, book: Journal, **asked) -> Report:
@@ -102,13 +135,19 @@ def _incident(done: Replay, book: Journal, **asked) -> Report:
 
 
 def _scenario(done: Replay, book: Journal, **asked) -> Report:
-    scenario, month = asked["scenario"], asked["month"]
+    return scenario_report(_compared(done, asked["scenario"], asked["month"]))
+
+
+def _shared_scenario(done: Replay, book: Journal, **asked) -> Report:
+    compared = _compared(done, asked["scenario"], asked["month"])
+    return shared_scenario_report(done, compared)
+
+
+def _compared(done: Replay, scenario: Scenario | None, month: str | None) -> Comparison:
     if scenario is None:
         raise ScenarioInvalid("name a scenario with --scenario")
-    compared = compare_scenarios(
-        done.log, done.policy, scenario, (month, month), before=done
-    )
-    return scenario_report(compared)
+    period = (month, month)
+    return compare_scenarios(done.log, done.policy, scenario, period, before=done)
 
 
 _REPORTS: dict[str, Callable[..., Report]] = {
@@ -117,4 +156,10 @@ _REPORTS: dict[str, Callable[..., Report]] = {
     "filters": _filters,
     "incident": _incident,
     "scenario": _scenario,
+}
+
+_SHARED: dict[str, Callable[..., Report]] = {
+    "month": _shared_month,
+    "topics": _shared_topics,
+    "scenario": _shared_scenario,
 }

@@ -21,6 +21,7 @@ from reviewapp.reports.month import (
     month_report,
     sensors_table,
 )
+from reviewapp.reports.shared import shared_month_report
 
 WHOLE = "whole department"
 
@@ -324,6 +325,9 @@ def _report(month: Month) -> None:
         f"month-{month.month}",
         lambda: month_report(
             month, data.month_units(month.month), month_marks(data.sessions())
+        ),
+        lambda: shared_month_report(
+            data.replay(), month, data.month_units(month.month)
         ),
     )
 

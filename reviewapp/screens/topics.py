@@ -11,6 +11,7 @@ from engine.reviews.topics import CHOICES, Sheet, Topics
 from reviewapp import data, entry, parts, theme
 from reviewapp.drawings.topic import ranking_svg
 from reviewapp.parts import address
+from reviewapp.reports.shared import shared_topic_report
 from reviewapp.reports.topics import (
     sessions_html,
     sheet_html,
@@ -160,6 +161,7 @@ def _report(review: Topics) -> None:
     parts.downloads(
         f"topics-{review.since}-{review.until}",
         lambda: topic_report(review, parts.example_drawing),
+        lambda: shared_topic_report(data.replay(), review, parts.example_drawing),
     )
 
 

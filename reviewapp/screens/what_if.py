@@ -15,6 +15,7 @@ from engine.rules.wording import label_of, word
 from reviewapp import data, entry, parts, theme
 from reviewapp.drawings.scenario import filters_svg, outcome_svg
 from reviewapp.reports.scenario import classes_table, rules_table, scenario_report
+from reviewapp.reports.shared import shared_scenario_report
 
 OWN = "Compose one"
 WRITTEN = "Paste one as TOML"
@@ -202,7 +203,9 @@ def _flags(comparison: Comparison) -> None:
 
 def _keep_it(comparison: Comparison) -> None:
     parts.downloads(
-        f"what-if-{comparison.scenario.name}", lambda: scenario_report(comparison)
+        f"what-if-{comparison.scenario.name}",
+        lambda: scenario_report(comparison),
+        lambda: shared_scenario_report(data.replay(), comparison),
     )
     with st.expander("Keep this scenario"), entry.form("scenario"):
         reason = st.text_input("Why it is kept")
