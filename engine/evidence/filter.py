@@ -105,6 +105,21 @@ RESIDUAL_ARRANGEMENTS_COUNT = Number(
     where="arrangements drawn where all are too many",
     known="ours",
 )
+FIRST_LOOK_ARRANGEMENTS_COUNT = Number(
+    value=199,
+    unit="count",
+    source=OURS,
+    where="arrangements drawn first; most filters are settled by them",
+    known="ours",
+)
+FIRST_LOOK_P_FRAC = Number(
+    value=0.2,
+    unit="frac",
+    source=OURS,
+    where="p above which the first look settles that nothing changed",
+    known="ours",
+    note="a change with p .05 exceeds it in fewer than one of a million first looks",
+)
 BREAK_SEGMENT_FRAC = Number(
     value=0.15,
     unit="frac",

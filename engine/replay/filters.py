@@ -15,7 +15,8 @@ import pandas as pd
 
 from engine.evidence.filter import NEW_FILTER_WITHIN_H
 from engine.policy import Policy
-from engine.stats.filter_life import FilterLife, life_of
+from engine.stats.filter_life import FilterLife
+from engine.stats.filter_lives import KEPT, lives_of
 from engine.stats.footing import (
     DOUBTS,
     at_reference_flow,
@@ -53,8 +54,7 @@ SELECT life.*, u.ventilator_token, u.filter_kind::VARCHAR AS filter_kind,
 FROM life JOIN filter_use u USING (filter_id)
 """
 
-# What of a life is kept in the table; its segments stay with the one filter asked for.
-_KEPT = [f for f in fields(FilterLife) if "tuple" not in str(f.type)]
+_KEPT = [f for f in fields(FilterLife) if f.name in KEPT]
 
 
 def read_filters(cursor: duckdb.DuckDBPyConnection, policy: Policy) -> None:
@@ -108,30 +108,23 @@ def _keep_lives(
     cursor: duckdb.DuckDBPyConnection, readings: pd.DataFrame, policy: Policy
 ) -> None:
     limits = policy.filters
-    grouped = {
-        name: (own["hours_h"].to_numpy(float), own["resistance"].to_numpy(float))
-        for name, own in readings.groupby("filter_id", sort=False)
-    }
-    nothing = (np.array([]), np.array([]))
-    rows = []
-    for (filter_id,) in cursor.execute("SELECT filter_id FROM filter_use").fetchall():
-        hours, resistance = grouped.get(filter_id, nothing)
-        life = life_of(
-            hours,
-            resistance,
-            limits.limit_cmh2o_per_lps,
-            limits.near_limit_frac,
-            limits.readings_for_a_trend_count,
-            limits.rising_p,
-            limits.unlogged_change_p,
-        )
-        rows.append([filter_id, *(getattr(life, f.name) for f in _KEPT)])
+    filters = cursor.execute("SELECT filter_id FROM filter_use").df()["filter_id"]
+    lives = lives_of(
+        pd.Index(filters).get_indexer(readings["filter_id"]),
+        len(filters),
+        readings["hours_h"].to_numpy(float),
+        readings["resistance"].to_numpy(float),
+        limits.limit_cmh2o_per_lps,
+        limits.near_limit_frac,
+        limits.readings_for_a_trend_count,
+        limits.rising_p,
+        limits.unlogged_change_p,
+    )
     columns = ", ".join(f"{f.name} {_sql_type(str(f.type))}" for f in _KEPT)
     cursor.execute(f"CREATE TABLE life (filter_id VARCHAR, {columns})")
-    if rows:
-        names = ["filter_id", *(f.name for f in _KEPT)]
-        cursor.register("life_rows", pd.DataFrame(rows, columns=names))
-        cursor.execute("INSERT INTO life FROM life_rows")
+    if len(filters):
+        cursor.register("life_rows", pd.DataFrame({"filter_id": filters, **lives}))
+        cursor.execute("INSERT INTO life BY NAME FROM life_rows")
         cursor.unregister("life_rows")
     cursor.execute(_LIVES)
 

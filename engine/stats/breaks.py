@@ -22,6 +22,8 @@ from engine.evidence.filter import (
     BREAK_SEGMENT_FRAC,
     CHANGE_READINGS_COUNT,
     EXACT_ARRANGEMENTS_COUNT,
+    FIRST_LOOK_ARRANGEMENTS_COUNT,
+    FIRST_LOOK_P_FRAC,
     INTERVAL_COVER_FRAC,
     RESIDUAL_ARRANGEMENTS_COUNT,
     SEGMENT_READINGS_COUNT,
@@ -89,7 +91,8 @@ def line_and_step(
     Scans   every place with enough readings on both sides where the reading really
             falls. The rise is a line, or with ``may_bend`` a line and its square.
     p       share of rearrangements of what the rise leaves over that do as well: all
-            of them where they are few, otherwise drawn with the seed returned.
+            of them where they are few, otherwise drawn with the seed returned. A first
+            look at a few draws settles it where p is far from anything to act on.
     slope   and ``drop`` are those of a straight line with the step.
     Refuses fewer than ``fewest`` readings.
     Source  residual permutation; FREEDMAN_1983
@@ -109,12 +112,19 @@ def line_and_step(
     if observed <= 0 or float((left**2).sum()) <= _ROUNDING * float((y**2).sum()):
         return _straight(n, x, y)
     at = int(places[int(best[0].argmax())])
-    order, exact = _orders(n, seed, arrangements)
-    mixed = left[order]
-    readings = (y - left)[None, :] + mixed
-    chance = _allowed(*_step_shares(mixed, steps, rise), readings, places).max(axis=1)
-    beaten = int((chance >= observed * (1 - _ROUNDING)).sum())
-    p = beaten / len(order) if exact else (beaten + 1) / (len(order) + 1)
+
+    def share_as_good(order: np.ndarray, exact: bool) -> float:
+        mixed = left[order]
+        readings = (y - left)[None, :] + mixed
+        chance = _allowed(*_step_shares(mixed, steps, rise), readings, places)
+        beaten = int((chance.max(axis=1) >= observed * (1 - _ROUNDING)).sum())
+        return beaten / len(order) if exact else (beaten + 1) / (len(order) + 1)
+
+    order, exact = _drawn(n, seed, int(FIRST_LOOK_ARRANGEMENTS_COUNT)), False
+    p = share_as_good(order, exact)
+    if p <= float(FIRST_LOOK_P_FRAC):
+        order, exact = _orders(n, seed, arrangements)
+        p = share_as_good(order, exact)
     slope, drop = _with_step(x, y, at)
     return Step(
         readings_count=n,
@@ -252,8 +262,13 @@ def _orders(n: int, seed: int, arrangements: int | None) -> tuple[np.ndarray, bo
     if math.factorial(n) <= int(EXACT_ARRANGEMENTS_COUNT):
         return np.array(list(permutations(range(n)))), True
     count = int(RESIDUAL_ARRANGEMENTS_COUNT) if arrangements is None else arrangements
+    return _drawn(n, seed, count), False
+
+
+@lru_cache(maxsize=64)
+def _drawn(n: int, seed: int, count: int) -> np.ndarray:
     drawn = np.random.default_rng(seed)
-    return drawn.permuted(np.tile(np.arange(n), (count, 1)), axis=1), False
+    return drawn.permuted(np.tile(np.arange(n), (count, 1)), axis=1)
 
 
 def _with_step(x: np.ndarray, y: np.ndarray, at: int) -> tuple[float, float]:

@@ -17,7 +17,7 @@ from engine.evidence.filter import CHANGE_READINGS_COUNT
 from engine.stats.breaks import Step, line_and_step
 from engine.stats.footing import at_reference_flow, with_doubts_in_place
 from engine.stats.forecast import ALREADY_THERE, TOO_FEW, Forecast, pivot_forecast
-from engine.stats.trends import mann_kendall, theil_sen
+from engine.stats.trends import Slope, mann_kendall, theil_sen
 
 STATES: tuple[str, ...] = (
     "steady",
@@ -106,14 +106,15 @@ def life_of(
         return _nothing(left_out, seed)
     logged = sorted(h for h in logged_changes_h if h > x[0])
     ends, steps, first_p = _split(x, y, logged, change_p, seed)
+    slopes = [_slope(x[a:b], y[a:b], min_readings) for a, b, _ in ends]
     segments = tuple(
-        _segment(x[a:b], y[a:b], min_readings, rising_p, begins)
-        for a, b, begins in ends
+        _segment(x[a:b], y[a:b], slope, rising_p, min_readings, begins)
+        for (a, b, begins), slope in zip(ends, slopes, strict=True)
     )
     start = ends[-1][0]
     last = segments[-1]
     state = _state(last, limit, near_frac, min_readings)
-    ahead = _forecast(x[start:], y[start:], limit, min_readings)
+    ahead = _forecast(x[start:], y[start:], slopes[-1], limit, min_readings)
     strongest = min(steps, key=lambda step: step.p) if steps else None
     return FilterLife(
         state=state,
@@ -137,7 +138,7 @@ def life_of(
         suspected_changes_h=tuple(sorted(step.before_x for step in steps)),
         segments=segments,
         seed=seed,
-        note=_note(x, y),
+        note=note_of(len(y), bool(np.all(y == y[0]))),
     )
 
 
@@ -181,13 +182,21 @@ def _split(
     return done, steps, min(first_p) if first_p else None
 
 
+def _slope(x: np.ndarray, y: np.ndarray, min_readings: int) -> Slope | None:
+    return theil_sen(x, y) if len(y) >= min_readings else None
+
+
 def _segment(
-    x: np.ndarray, y: np.ndarray, min_readings: int, rising_p: float, begins: str
+    x: np.ndarray,
+    y: np.ndarray,
+    slope: Slope | None,
+    rising_p: float,
+    min_readings: int,
+    begins: str,
 ) -> Segment:
     slope_per_h = low = high = p = math.nan
     since = None
-    if len(y) >= min_readings:
-        slope = theil_sen(x, y)
+    if slope is not None:
         slope_per_h, low, high = slope.slope, slope.low, slope.high
         trend = mann_kendall(y, x)
         p = trend.p
@@ -235,12 +244,16 @@ def _state(last: Segment, limit: float, near_frac: float, min_readings: int) -> 
 
 
 def _forecast(
-    x: np.ndarray, y: np.ndarray, limit: float, min_readings: int
+    x: np.ndarray,
+    y: np.ndarray,
+    slope: Slope | None,
+    limit: float,
+    min_readings: int,
 ) -> Forecast:
     nan = math.nan
     if y[-1] > limit:
         return Forecast(at=nan, low=nan, high=nan, refusal=ALREADY_THERE)
-    return pivot_forecast(x, y, limit, fewest=min_readings)
+    return pivot_forecast(x, y, limit, fewest=min_readings, line=slope)
 
 
 def _from_last(at: float, last: float) -> float | None:
@@ -251,12 +264,15 @@ def _known(value: float) -> float | None:
     return None if math.isnan(value) else value
 
 
-def _note(x: np.ndarray, y: np.ndarray) -> str:
-    if len(y) == 1:
+def note_of(readings_count: int, all_the_same: bool) -> str:
+    """What is to be said of so many usable readings, or an empty word."""
+    if readings_count == 0:
+        return "no readings that can be used"
+    if readings_count == 1:
         return "one reading: nothing can be said of a trend"
-    if np.all(y == y[0]):
+    if all_the_same:
         return "every reading is the same"
-    if len(y) < int(CHANGE_READINGS_COUNT):
+    if readings_count < int(CHANGE_READINGS_COUNT):
         return "too few readings to look for an unlogged change"
     return ""
 
@@ -284,7 +300,7 @@ def _nothing(left_out: int, seed: int) -> FilterLife:
         suspected_changes_h=(),
         segments=(),
         seed=seed,
-        note="no readings that can be used",
+        note=note_of(0, False),
     )
 
 

@@ -18,7 +18,7 @@ from engine.evidence.filter import (
     INTERVAL_COVER_FRAC,
     TREND_READINGS_COUNT,
 )
-from engine.stats.trends import theil_sen
+from engine.stats.trends import Slope, theil_sen
 
 TOO_FEW = "too few readings for a forecast"
 SLOPE_MAY_BE_ZERO = "the slope's lower bound is not above zero"
@@ -49,19 +49,21 @@ def pivot_forecast(
     cover: float | None = None,
     fewest: int | None = None,
     horizon_spans: float | None = None,
+    line: Slope | None = None,
 ) -> Forecast:
     """When a rising series reaches the limit, by the Theil-Sen pivot.
 
     The line passes through the medians of both axes; the ends of the interval come
     from the ends of the slope's interval. No date further ahead than
-    ``horizon_spans`` times what has been observed; infinity lifts that.
+    ``horizon_spans`` times what has been observed; infinity lifts that. ``line`` is
+    the slope of these readings where it is known already.
     Source   closed form from SEN_1968; coverage measured, see engine/evidence
     """
     x, y = _finite(times, values)
     enough = int(TREND_READINGS_COUNT) if fewest is None else fewest
     if len(y) < enough:
         return _refused(TOO_FEW)
-    line = theil_sen(x, y, cover)
+    line = line or theil_sen(x, y, cover)
     if line.refusal:
         return _refused(NO_SPREAD)
     if not line.low > 0:
