@@ -23,6 +23,7 @@ from engine.log.open import stamp_of
 from engine.policy import Policy, load_policy
 from engine.replay import Replay, Scenario, scenario_from
 from engine.replay import replay as replayed
+from engine.reviews import chart_check as checking
 from engine.reviews import filters as filter_review
 from engine.reviews import incident as incident_review
 from engine.reviews import month as month_review
@@ -302,6 +303,16 @@ def month(month: str, unit: str | None) -> month_review.Month:
         lambda: month_review.review_month(replay(), month, journal(), unit),
         month,
         unit,
+        reads_journal=True,
+    )
+
+
+def chart_check(month: str) -> checking.ChartCheck:
+    """What reviewers found in the month's sample of charts."""
+    return _once(
+        "chart check",
+        lambda: checking.chart_check(replay(), journal(), month),
+        month,
         reads_journal=True,
     )
 

@@ -66,13 +66,22 @@ class Replay:
     policy: Policy
     scenario: Scenario | None
     stamp: dict[str, Any]
+    _told: dict[str, pd.DataFrame] = field(default_factory=dict)
 
     def frame(self, sql: str, params: Any = None) -> pd.DataFrame:
         """The rows a query gives, as a table."""
         return self.log.frame(sql, params)
 
+    def history(self, sql: str, params: Any = None) -> pd.DataFrame:
+        """The rows of a query over the whole log, asked once: no replay changes."""
+        key = f"{sql}{params}"
+        if key not in self._told:
+            self._told[key] = self.frame(sql, params)
+        return self._told[key].copy()
+
     def close(self) -> None:
         """Gives the memory back."""
+        self._told.clear()
         self.log.close()
 
 

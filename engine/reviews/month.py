@@ -81,7 +81,7 @@ class Month:
 
 def months_of(replay: Replay) -> pd.DataFrame:
     """local_month, treatments, patients of every month that has any."""
-    return replay.frame(rows.MONTHS)
+    return replay.history(rows.MONTHS)
 
 
 def last_whole_month(replay: Replay) -> str:
@@ -127,7 +127,7 @@ def review_month(
         },
     )
     dose = _dose(replay, month, unit)
-    checked = confirmations(replay, journal, month, unit)
+    checked = confirmations(replay, journal, month, unit, flags)
     whole = _is_whole(replay, month)
     sentence = words.sentence(month, unit, treatments, patients, named, filters, whole)
     return Month(
@@ -142,7 +142,7 @@ def review_month(
         patients=patients,
         whole=whole,
         months=tuple(months),
-        units=replay.frame(rows.UNITS),
+        units=replay.history(rows.UNITS),
         lines=lines,
         flags=flags,
         filters=filters,
@@ -219,7 +219,7 @@ def _reach(replay: Replay, month: str) -> tuple[datetime, datetime]:
 
 def _is_whole(replay: Replay, month: str) -> bool:
     """Whether the log goes to the last day of the month at least."""
-    last = replay.frame(rows.LAST_RECORD, {"zone": replay.log.site_zone})["last_at"]
+    last = replay.history(rows.LAST_RECORD, {"zone": replay.log.site_zone})["last_at"]
     if pd.isna(last.iloc[0]):
         return False
     end = pd.Timestamp(f"{month_after(month)}-01") - pd.Timedelta(days=1)
@@ -233,10 +233,9 @@ def _dose(replay: Replay, month: str, unit: str | None) -> dict[str, float]:
 
 def _rare(replay: Replay, until: datetime) -> str:
     """Events and treatments of the whole department up to the end of the month."""
-    places = replay.frame(rows.EVENT_PLACES, {"until": until})["place"]
-    given = replay.frame(
-        "SELECT count(*) AS n FROM asked WHERE started_at < $until", {"until": until}
-    )
+    events = replay.history(rows.EVENT_PLACES)
+    places = events.loc[events["on_day"] < pd.Timestamp(until), "place"]
+    given = replay.frame(rows.GIVEN_UNTIL, {"until": until})
     return words.rare_events(places.to_numpy(float), float(given["n"].iloc[0]))
 
 

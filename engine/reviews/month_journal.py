@@ -42,13 +42,17 @@ class Confirmations:
 
 
 def confirmations(
-    replay: Replay, journal: Journal | None, month: str, unit: str | None
+    replay: Replay,
+    journal: Journal | None,
+    month: str,
+    unit: str | None,
+    flags: pd.DataFrame,
 ) -> Confirmations:
     """Flagged, reviewed and confirmed, by rule.
 
+    ``flags``  rule_id and flags of the month
     Two reviewers of one finding count once: confirmed only where none dismissed it.
     """
-    flags = replay.frame(rows.FLAGS, {"month": month, "unit": unit})
     judged = _judged(replay, journal)
     own = judged[judged["local_month"] == month]
     if unit is not None:

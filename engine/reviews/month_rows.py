@@ -88,7 +88,9 @@ FROM one GROUP BY ALL ORDER BY ALL
 
 def treatment_series(replay: Replay, unit: str | None) -> pd.DataFrame:
     """Counts by month and indicator."""
-    return replay.frame(_SERIES.format(by="local_month"), {"unit": unit, "month": None})
+    return replay.history(
+        _SERIES.format(by="local_month"), {"unit": unit, "month": None}
+    )
 
 
 def unit_counts(replay: Replay, month: str) -> pd.DataFrame:
@@ -188,7 +190,12 @@ numbered AS (
 )
 SELECT e.on_day, coalesce(t.n, 0)::DOUBLE AS place
 FROM event e ASOF LEFT JOIN numbered t ON e.on_day >= t.started_at
-WHERE e.on_day < $until ORDER BY 1
+ORDER BY 1
+"""
+
+GIVEN_UNTIL = """
+SELECT count(*) AS n FROM treatment WHERE started_at < $until
+  AND status IS DISTINCT FROM 'not_given'
 """
 
 PERCENTILES = [i / 100 for i in range(1, 100)]

@@ -58,17 +58,17 @@ def _other_series(
         series = share_series(BY_ID[name], rows.summed(parts), months)
         made[name] = (series, notes)
 
-    share("I15", replay.frame(rows.NOT_GIVEN, {**of_unit, "zone": zone}))
-    share("I08", replay.frame(rows.FALLS, {"zone": zone}), whole)
+    share("I15", replay.history(rows.NOT_GIVEN, {**of_unit, "zone": zone}))
+    share("I08", replay.history(rows.FALLS, {"zone": zone}), whole)
     limit = replay.policy.sensors.unfiltered_since_check_count
-    share("I18", replay.frame(rows.OVER_COUNT, {**of_unit, "limit": limit}))
+    share("I18", replay.history(rows.OVER_COUNT, {**of_unit, "limit": limit}))
     share("I21", judged_series(replay, journal, unit))
     share("I22", stronger_series(journal), whole)
     made["I07"] = (_rises(replay, months), whole)
     made["I11"] = (_delivered(replay, months, unit), _BAND)
-    minutes = replay.frame(rows.PERSON_MINUTES, of_unit)
+    minutes = replay.history(rows.PERSON_MINUTES, of_unit)
     made["I13"] = (mean_series(minutes, months, 100.0), ())
-    made["I14"] = (mean_series(replay.frame(rows.ROOM_UG, of_unit), months), ())
+    made["I14"] = (mean_series(replay.history(rows.ROOM_UG, of_unit), months), ())
     made["I19"] = (_events(replay, counts, months, zone, unit), whole)
     return made
 
@@ -79,7 +79,7 @@ _BAND = ("The interval is that of the median, not the spread of treatments.",)
 def _rises(replay: Replay, months: list[str]) -> pd.DataFrame:
     """Median slope of the filters whose last reading fell in each month."""
     rows.make_rises(replay)
-    return _medians(replay.frame(rows.RISES), "slope", months)
+    return _medians(replay.history(rows.RISES), "slope", months)
 
 
 def _medians(table: pd.DataFrame, column: str, months: list[str]) -> pd.DataFrame:
@@ -116,8 +116,8 @@ def _median_with_ends(values: np.ndarray) -> tuple[float, float, float]:
 
 def _delivered(replay: Replay, months: list[str], unit: str | None) -> pd.DataFrame:
     """Median delivered share by month, its interval allowing for patients alike."""
-    levels = replay.frame(rows.DELIVERED, {"unit": unit}).set_index("local_month")
-    above = rows.summed(replay.frame(rows.ABOVE_MEDIAN, {"unit": unit}))
+    levels = replay.history(rows.DELIVERED, {"unit": unit}).set_index("local_month")
+    above = rows.summed(replay.history(rows.ABOVE_MEDIAN, {"unit": unit}))
     effect = share_series(BY_ID["I12"], above, months).set_index("local_month")
     made = []
     for month in months:
@@ -152,7 +152,7 @@ def _events(
     unit: str | None,
 ) -> pd.DataFrame:
     """Flow-sensor events per 1,000 treatments, exact Poisson interval."""
-    events = replay.frame(rows.SENSOR_EVENTS, {"zone": zone})
+    events = replay.history(rows.SENSOR_EVENTS, {"zone": zone})
     if unit is not None:
         counts = rows.treatment_series(replay, None)
     everyone = counts[counts["indicator"] == rows.EVERYONE].set_index("local_month")

@@ -136,10 +136,10 @@ def _agreement() -> None:
 def _detection() -> None:
     file = resources.files("engine.evidence").joinpath("detection.csv")
     rows = list(csv.DictReader(file.read_text("utf-8").splitlines()))
-    seeds = rows[0]["departments"] if rows else "no"
+    seeds = rows[0]["seeds"] if rows else "none"
     st.markdown(
-        f"How often the flags are right, on {parts.plain(seeds)} made departments "
-        "whose truth is known (tests/bench/detection.py makes this table again)."
+        "How often the flags are right, on made departments whose truth is known, "
+        f"seeds {parts.plain(seeds)} (tests/bench/detection.py makes this table again)."
     )
     body = "".join(
         f"<tr><td>{escape(row['question'])}</td>"

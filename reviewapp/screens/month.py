@@ -5,7 +5,7 @@ from __future__ import annotations
 import streamlit as st
 
 from engine.errors import EngineError
-from engine.reviews.chart_check import CHART, chart_check, draw_sample
+from engine.reviews.chart_check import CHART, draw_sample
 from engine.reviews.figures import month_words
 from engine.reviews.incident_words import STRENGTHS
 from engine.reviews.indicators import INDICATORS
@@ -189,7 +189,7 @@ def _confirmations(month: Month) -> None:
 def _chart_check(month: Month) -> None:
     """A sample drawn once, read blind; what it says of flags and of what they miss."""
     st.subheader("Chart check")
-    found = chart_check(data.replay(), data.journal(), month.month)
+    found = data.chart_check(month.month)
     st.markdown(parts.plain(found.sentence))
     if not found.charts:
         _draw_sample(month)

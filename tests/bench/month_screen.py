@@ -70,9 +70,12 @@ def seconds(act, page: Page, sentence: str = "") -> float:
     return time.perf_counter() - started
 
 
-def choose(page: Page, label: str, option: str) -> None:
+def chosen(page: Page, label: str, option: str, old: str) -> float:
+    """From the choice in the opened list to the drawn answer."""
     page.get_by_role("combobox", name=label).first.click()
-    page.get_by_role("option", name=option, exact=True).click()
+    place = page.get_by_role("option", name=option, exact=True)
+    place.wait_for()
+    return seconds(place.click, page, old)
 
 
 def main(log: str, chromium: str | None = None) -> None:
@@ -99,9 +102,7 @@ def main(log: str, chromium: str | None = None) -> None:
                 old = page.locator("p.opening").inner_text()
                 if month.split()[0] in old.split(":")[0]:
                     continue
-                times.append(
-                    seconds(lambda m=month: choose(page, "Month", m), page, old)
-                )
+                times.append(chosen(page, "Month", month, old))
             told(times, f"another month, {name}")
         page.get_by_role("combobox", name="Unit").first.click()
         units = page.get_by_role("option").all_inner_texts()
@@ -110,7 +111,7 @@ def main(log: str, chromium: str | None = None) -> None:
             times = []
             for unit in [*units[1:], units[0]]:
                 old = page.locator("p.opening").inner_text()
-                times.append(seconds(lambda u=unit: choose(page, "Unit", u), page, old))
+                times.append(chosen(page, "Unit", unit, old))
             told(times, f"one unit, {name}")
         browser.close()
 
