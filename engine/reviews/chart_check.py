@@ -8,6 +8,7 @@ on: a verdict on ``<treatment>:chart``.
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from itertools import combinations
 from typing import Any
@@ -223,14 +224,20 @@ def _sentence(
     if agreed is not None:
         parts.append(
             f"Two reviewers agreed on {percent(agreed.agreed_frac)} of"
-            f" {counted(agreed.charts_count, 'chart')}"
-            + (
-                "; too few for a coefficient."
-                if agreed.refusal
-                else f" (kappa {agreed.kappa:.2f}, AC1 {agreed.ac1:.2f})."
-            )
+            f" {counted(agreed.charts_count, 'chart')}" + _coefficients(agreed)
         )
     return " ".join(parts)
+
+
+def _coefficients(agreed: Agreement) -> str:
+    if agreed.refusal:
+        return "; too few for a coefficient."
+    if not math.isfinite(agreed.kappa):
+        return (
+            f" (AC1 {agreed.ac1:.2f}; kappa cannot be worked out, all answers are"
+            " alike)."
+        )
+    return f" (kappa {agreed.kappa:.2f}, AC1 {agreed.ac1:.2f})."
 
 
 def _told(share: Estimate) -> str:

@@ -362,7 +362,9 @@ def _survival(replay: Replay, lives: pd.DataFrame) -> tuple[pd.DataFrame, pd.Dat
     add("all", "all filters", kaplan_meier(hours, reached), None)
     for column, by in _GROUPINGS.items():
         group = endings[column].astype(object).fillna("unknown").to_numpy()
-        p = _or_none(log_rank(hours, reached, group).p)
+        names, sizes = np.unique(group, return_counts=True)
+        shown = np.isin(group, names[sizes >= int(POOLED_FILTERS_COUNT)])
+        p = _or_none(log_rank(hours[shown], reached[shown], group[shown]).p)
         for name in sorted(set(group)):
             own = group == name
             if own.sum() < int(POOLED_FILTERS_COUNT):

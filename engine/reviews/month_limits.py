@@ -78,6 +78,8 @@ def limits_of(
     if baseline is None or indicator.kind == "amount":
         return None
     centre = centre_of(months, baseline)
+    if not centre > 0 or (indicator.kind != "rate" and not centre < 1):
+        return None  # none seen is no reason to call the first one out of order
     if indicator.kind == "rate":
         done = exact_u_limits(months["count"], months["known"], centre)
         return Limits(
@@ -110,6 +112,9 @@ def change_of(
     before, now = months.iloc[-2], months.iloc[-1]
     fewest = policy.cells.percent_needs_count if indicator.is_share else 1
     if min(before["known"], now["known"]) < fewest:
+        return None, math.nan, math.nan
+    few = min(before["patients"], now["patients"]) < policy.cells.patients_count
+    if indicator.kind == "treatments" and few:
         return None, math.nan, math.nan
     change = now["value"] - before["value"]
     if not math.isfinite(change):

@@ -149,7 +149,9 @@ def line(
         outside=limits.outside if limits else False,
     )
     run = run_rules(
-        months["value"], None if frozen is None else centre_of(months, frozen)
+        months["value"],
+        None if frozen is None else centre_of(months, frozen),
+        fixed_before=frozen is not None and frozen.signed,
     )
     value = None if few else _or_none(now["value"])
     change, low, high = change_of(months, policy, indicator)

@@ -113,7 +113,8 @@ def _with_funnel(
         notes.append(f"A funnel needs {needed} units; intervals only.")
         return table, _lines(target, np.array([]), 1.0), tuple(notes)
     own = table[shown]
-    effective = (own["known"] / own["design_effect"]).to_numpy()
+    whole = np.floor((own["known"] / own["design_effect"]).to_numpy(float))
+    effective = np.maximum(whole, 1.0)
     seen = own["value"].to_numpy() * effective
     drawn = shrunken(seen, effective)
     table.loc[shown, "shrunk"] = drawn.rate
@@ -153,7 +154,10 @@ def _lines(target: float, effective: np.ndarray, widen: float) -> pd.DataFrame:
 def _widened(
     target: float, n: np.ndarray, cover: float, widen: float
 ) -> tuple[np.ndarray, np.ndarray]:
-    low, high = funnel_limits(target, n, cover)
+    """Both lines; the upper one mirrors the lower, so that either tail is as rare."""
+    low, _ = funnel_limits(target, n, cover)
+    mirrored, _ = funnel_limits(1 - target, n, cover)
+    high = 1 - mirrored
     return (
         np.clip(target - widen * (target - low), 0, 1),
         np.clip(target + widen * (high - target), 0, 1),

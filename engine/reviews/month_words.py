@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 
 import numpy as np
@@ -173,6 +174,8 @@ def rare_events(places: np.ndarray, treatments: float) -> str:
     if len(gaps) < needed:
         return f"{opening}. Limits of the gaps need {needed + 1} events."
     limits = g_limits(gaps)
+    if math.isnan(limits.high):
+        return f"{opening}. They come too often for a chart of rare events."
     told = f"{opening}; {limits.mean:,.0f} lie between two on average"
     if since > limits.high:
         return f"{told}. So long a gap would be rare by chance: better than before."

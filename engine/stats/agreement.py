@@ -52,8 +52,9 @@ def agreement(table: ArrayLike, fewest: int | None = None) -> Agreement:
     Raises      ValueError if the table is not square or empty.
     """
     counts = np.asarray(table, float)
-    if counts.ndim != 2 or counts.shape[0] != counts.shape[1] or not counts.sum():
-        raise ValueError("the table must be square and hold at least one chart")
+    square = counts.ndim == 2 and counts.shape[0] == counts.shape[1] > 1
+    if not square or not counts.sum():
+        raise ValueError("the table must be square, 2 by 2 at least, and hold a chart")
     n = counts.sum()
     p = counts / n
     row, column = p.sum(axis=1), p.sum(axis=0)

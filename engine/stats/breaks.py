@@ -192,7 +192,8 @@ def one_break(
         cover = float(INTERVAL_COVER_FRAC) if cover is None else cover
         ends = _break_ends(float(first.var()), float(second.var()), cover)
         scale = float(first.var()) / shift**2
-        low, high = at - math.ceil(ends[1] * scale), at - math.floor(ends[0] * scale)
+        low = max(at - math.ceil(ends[1] * scale), 0)
+        high = min(at - math.floor(ends[0] * scale), n)
     return Break(
         at=at,
         low=float(low),
@@ -319,8 +320,8 @@ def _break_ends(
     bottom = -1.0
     while _break_chance(bottom, ratio) > tail:
         bottom *= 2
-    high = brentq(lambda x: _break_chance(x, ratio) - (1 - tail), 0, top)
-    low = brentq(lambda x: _break_chance(x, ratio) - tail, bottom, 0)
+    high = brentq(lambda x: _break_chance(x, ratio) - (1 - tail), bottom, top)
+    low = brentq(lambda x: _break_chance(x, ratio) - tail, bottom, top)
     return float(low), float(high)
 
 

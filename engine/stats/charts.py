@@ -52,15 +52,20 @@ class RunRules:
     false_alarm_frac: float
 
 
-def run_rules(values: ArrayLike, centre: float | None = None) -> RunRules:
-    """The two rules, about the median of the series or a centre line fixed before.
+def run_rules(
+    values: ArrayLike, centre: float | None = None, fixed_before: bool = True
+) -> RunRules:
+    """The two rules, about the median of the series or a centre line given.
 
+    ``fixed_before``  false where the centre comes from these very points: their false
+                      alarms are then nearer those about their own median
     Points on the line and missing points are passed over.
     Source   Anhoej and Olesen 2014, PLoS ONE 9:e113825
     Checked  tests/published/review_methods.csv
     """
     y = np.asarray(values, float)
     y = y[np.isfinite(y)]
+    centre = None if centre is None or math.isnan(centre) else centre
     line = (float(np.median(y)) if len(y) else math.nan) if centre is None else centre
     side = np.sign(y - line)
     side = side[side != 0]
@@ -69,6 +74,7 @@ def run_rules(values: ArrayLike, centre: float | None = None) -> RunRules:
     turns = np.flatnonzero(np.diff(side) != 0)
     ends = np.concatenate([[-1], turns, [n - 1]])
     longest = int(np.max(np.diff(ends))) if n else 0
+    own = centre is None or not fixed_before
     speaks = n >= int(RUN_POINTS_COUNT)
     signal = longest > run_limit or len(turns) < crossings_limit
     return RunRules(
@@ -78,7 +84,7 @@ def run_rules(values: ArrayLike, centre: float | None = None) -> RunRules:
         crossings=len(turns),
         crossings_limit=crossings_limit,
         signal=bool(signal) if speaks else None,
-        false_alarm_frac=run_false_alarm(n, centre is None) if speaks else math.nan,
+        false_alarm_frac=run_false_alarm(n, own) if speaks else math.nan,
     )
 
 
@@ -229,8 +235,8 @@ def laney_p_limits(count: ArrayLike, n: ArrayLike) -> Widened:
     half = float(SIGMAS_RATIO) * sigma * sigma_z
     limits = Limits(
         centre=np.full(total.shape, p),
-        low=p - half,
-        high=p + half,
+        low=np.maximum(p - half, 0),
+        high=np.minimum(p + half, 1),
         outside=np.abs(rate - p) > half,
     )
     spread = float(stats.chi2.sf(float(np.sum(z**2)), len(x) - 1))
@@ -293,6 +299,8 @@ def g_limits(gaps: ArrayLike, exact: bool = True, tail: float | None = None) -> 
                upward some ten times too often and never downward
     """
     mean = float(np.mean(np.asarray(gaps, float)))
+    if exact and not mean > 1:  # not rare: events come as often as treatments
+        return Gaps(mean=mean, low=math.nan, high=math.nan)
     if not exact:
         half = float(SIGMAS_RATIO) * math.sqrt(mean * (mean + 1))
         return Gaps(mean=mean, low=0.0, high=mean + half)

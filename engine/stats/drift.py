@@ -281,19 +281,25 @@ def _described(
     with_sign = (slopes < 0) if falling else (slopes > 0)
     misfits = np.where(with_sign & (knees <= x[signal]), misfits, np.inf)
     best = int(misfits.argmin())
-    low, high = _start_interval(knees, misfits, best, len(x))
-    step_at, step_misfit = _step(x, y)
-    sudden = step_misfit < misfits[best]
+    steps = _steps(x, y)
+    first = int(steps.argmin())
+    sudden = bool(steps[first] < misfits[best])
+    if sudden:  # somewhere between the check before and the check at the step
+        fair = np.flatnonzero(_as_fair(steps, first, len(x)))
+        low, high = float(x[fair.min()]), float(x[fair.max() + 1])
+    else:
+        fair_knees = knees[_as_fair(misfits, best, len(x))]
+        low, high = float(fair_knees.min()), float(fair_knees.max())
     nan = np.empty(0)
     return Drift(
         drifting=True,
-        started_h=step_at if sudden else float(knees[best]),
+        started_h=float(x[first + 1] if sudden else knees[best]),
         started_low_h=low,
         started_high_h=high,
         detected_h=float(x[signal]),
         ended_h=ended,
         falling=falling,
-        sudden=bool(sudden),
+        sudden=sudden,
         change_per_h=None if sudden else float(slopes[best]),
         last_change_frac=float(y[-1] / level - 1),
         level=level,
@@ -319,25 +325,20 @@ def _knees(x: np.ndarray, y: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.nda
     return knees, misfits, slopes
 
 
-def _step(x: np.ndarray, y: np.ndarray) -> tuple[float, float]:
-    """When one shift of level fits best, and its misfit."""
+def _steps(x: np.ndarray, y: np.ndarray) -> np.ndarray:
+    """The misfit of one shift of level before each check but the first."""
     n = len(y)
     k = np.arange(1, n)
     sums = np.cumsum(y)[:-1]
     gain = (sums - k * y.mean()) ** 2 * (1 / k + 1 / (n - k))
-    best = int(gain.argmax())
-    misfit = float(((y - y.mean()) ** 2).sum() - gain[best])
-    return float(x[best + 1]), misfit
+    return ((y - y.mean()) ** 2).sum() - gain
 
 
-def _start_interval(
-    knees: np.ndarray, misfits: np.ndarray, best: int, n: int
-) -> tuple[float, float]:
-    """Knees whose misfit the best one does not clearly beat."""
+def _as_fair(misfits: np.ndarray, best: int, n: int) -> np.ndarray:
+    """Starts whose misfit the best one does not clearly beat."""
     df = max(n - 3, 1)
     allowed = float(fisher.ppf(float(INTERVAL_COVER_FRAC), 1, df)) / df
-    fair = knees[misfits <= misfits[best] * (1 + allowed)]
-    return float(fair.min()), float(fair.max())
+    return misfits <= misfits[best] * (1 + allowed)
 
 
 def _quiet(spoke: bool, counts: dict) -> Drift:

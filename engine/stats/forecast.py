@@ -65,7 +65,7 @@ def pivot_forecast(
         return _refused(TOO_FEW)
     line = line or theil_sen(x, y, cover)
     if line.refusal:
-        return _refused(NO_SPREAD)
+        return _refused(NO_SPREAD if x[0] == x[-1] else line.refusal)
     if not line.low > 0:
         return _refused(SLOPE_MAY_BE_ZERO)
     last = float(x.max())

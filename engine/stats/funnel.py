@@ -53,10 +53,11 @@ def funnel_limits(
 ) -> tuple[np.ndarray, np.ndarray]:
     """Lower and upper line of a funnel for units of size n, from binomial quantiles.
 
-    The quantiles are joined between counts, so that the lines are smooth.
+    The quantiles are joined between counts, so that the lines are smooth. A size that
+    is no whole number is taken down to one.
     Source   Spiegelhalter 2005, Stat Med 24:1185 (formula from memory)
     """
-    size = np.asarray(n, float)
+    size = np.floor(np.asarray(n, float))
     tail = (1 - cover) / 2
     low = _between(target, size, tail)
     high = _between(target, size, 1 - tail)
@@ -111,6 +112,7 @@ def shrunken(count: ArrayLike, n: ArrayLike, cover: float | None = None) -> Shru
             special.betaincinv(x.sum() + 0.5, size.sum() - x.sum() + 0.5, t)
             for t in (tail, 1 - tail)
         )
+        low, high = min(low, pooled), max(high, pooled)
         flat = np.full(len(x), pooled)
         return Shrunken(
             rate=flat,

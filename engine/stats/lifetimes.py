@@ -31,7 +31,7 @@ class Lives:
 
 @dataclass(frozen=True, kw_only=True)
 class LogRank:
-    """Whether the groups' lives differ; a p is given only if every group has ends."""
+    """Whether the groups' lives differ; ``df`` counts the groups that could tell."""
 
     statistic: float
     df: int
@@ -88,6 +88,8 @@ def kaplan_meier(
 def log_rank(hours: np.ndarray, ended: np.ndarray, group: np.ndarray) -> LogRank:
     """Whether lives differ between groups.
 
+    A group of which nobody was left when the first life ended says nothing and is
+    left out. Refused where fewer than two groups are left or all ended at one time.
     Source   Mantel 1966 (from memory), through statsmodels
     """
     from statsmodels.duration.survfunc import survdiff
@@ -95,12 +97,25 @@ def log_rank(hours: np.ndarray, ended: np.ndarray, group: np.ndarray) -> LogRank
     t, e, g = np.asarray(hours, float), np.asarray(ended, bool), np.asarray(group)
     good = np.isfinite(t) & (t > 0)
     t, e, g = t[good], e[good], g[good]
+    if len(np.unique(g)) < 2:
+        return _no_rank("only one group")
+    if not e.any():
+        return _no_rank("no life ended while watched")
+    first = t[e].min()
+    told = np.isin(g, [name for name in np.unique(g) if t[g == name].max() >= first])
+    t, e, g = t[told], e[told], g[told]
     df = len(np.unique(g)) - 1
-    if df < 1 or not e.any():
-        why = "only one group" if df < 1 else "no life ended while watched"
-        return LogRank(statistic=math.nan, df=max(df, 0), p=math.nan, refusal=why)
-    statistic, p = survdiff(t, e.astype(int), g)
+    if df < 1:
+        return _no_rank("only one group was watched when lives ended")
+    try:
+        statistic, p = survdiff(t, e.astype(int), g)
+    except np.linalg.LinAlgError:
+        return _no_rank("all lives that were watched ended at one time")
     return LogRank(statistic=float(statistic), df=df, p=float(p))
+
+
+def _no_rank(why: str) -> LogRank:
+    return LogRank(statistic=math.nan, df=0, p=math.nan, refusal=why)
 
 
 def _log_log_ends(
@@ -116,8 +131,9 @@ def _log_log_ends(
     log_s = np.log(np.where(inside, s, 0.5))
     width = np.exp(z * se / (np.where(inside, s, 0.5) * np.abs(log_s)))
     low = np.where(inside, np.exp(log_s * width), s)
-    high = np.where(inside, np.exp(log_s / width), s)
-    return low, high
+    high = np.where(inside, np.exp(log_s / width), np.where(s > 0, s, np.nan))
+    # Where the last one watched has ended, the bound before it still stands.
+    return low, pd.Series(high).ffill().fillna(1.0).to_numpy()
 
 
 def _crossing(hours: pd.Series, share: pd.Series) -> float | None:

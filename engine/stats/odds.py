@@ -103,7 +103,9 @@ def mantel_haenszel(
     ``statistic_corrected`` and ``p`` carry the continuity correction; the interval
     is that of Robins, Breslow and Greenland (from memory).
     """
-    stack = np.asarray(tables, float)
+    stack = np.asarray([t for t in tables if np.asarray(t).sum() > 0], float).reshape(
+        -1, 2, 2
+    )
     a, b, c, d = stack[:, 0, 0], stack[:, 0, 1], stack[:, 1, 0], stack[:, 1, 1]
     n = a + b + c + d
     informative = np.array([_informative(t) for t in stack.astype(int)])
@@ -129,16 +131,18 @@ def mantel_haenszel(
         statistic=float(statistic),
         statistic_corrected=float(corrected),
         sets_used=int(informative.sum()),
-        sets_dropped=int((~informative).sum()),
+        sets_dropped=len(tables) - int(informative.sum()),
     )
 
 
 def woolf_homogeneity_p(tables: Sequence[Sequence[Sequence[int]]]) -> float:
     """Chance of strata as different as these if they share one odds ratio.
 
-    Half is added to every cell. Do not pool strata that differ.
+    Half is added to every cell; strata without a single pair say nothing and are left
+    out. Do not pool strata that differ.
     """
-    stack = np.asarray(tables, float) + 0.5
+    filled = [t for t in tables if np.asarray(t).sum() > 0]
+    stack = np.asarray(filled, float).reshape(-1, 2, 2) + 0.5
     logs = np.log(stack[:, 0, 0] * stack[:, 1, 1] / (stack[:, 0, 1] * stack[:, 1, 0]))
     weights = 1 / (1 / stack).sum(axis=(1, 2))
     mean = (weights * logs).sum() / weights.sum()
@@ -162,14 +166,27 @@ def _informative(table: np.ndarray) -> bool:
 
 def _sum_law(tables: list[np.ndarray]) -> tuple[int, np.ndarray]:
     """Lowest value of the first cells' sum and the log weights from there up."""
-    first, law = 0, np.ones(1)
+    first, logs = 0, np.zeros(1)
     for table in tables:
         n, row, column = int(table.sum()), int(table[0].sum()), int(table[:, 0].sum())
         low, high = max(0, row + column - n), min(row, column)
         first += low
-        law = np.convolve(law, hypergeom.pmf(np.arange(low, high + 1), n, row, column))
-    with np.errstate(divide="ignore"):
-        return first, np.log(law)
+        own = hypergeom.logpmf(np.arange(low, high + 1), n, row, column)
+        logs = _added(logs, own)
+    return first, logs
+
+
+def _added(first: np.ndarray, second: np.ndarray) -> np.ndarray:
+    """Log weights of a sum of two; kept as logs, for the far tails decide the ends."""
+    if len(first) == 1:
+        return first[0] + second
+    if len(second) == 1:
+        return first + second[0]
+    sums = np.full(len(first) + len(second) - 1, -np.inf)
+    for i, weight in enumerate(first):
+        reached = slice(i, i + len(second))
+        sums[reached] = np.logaddexp(sums[reached], weight + second)
+    return sums
 
 
 def _tilted(

@@ -119,6 +119,7 @@ def poisson_exact(
     with np.errstate(divide="ignore", invalid="ignore"):
         low = np.where(x > 0, special.gammaincinv(np.maximum(x, 1e-300), tail), 0.0)
         high = special.gammaincinv(x + 1, 1 - tail)
+        low = np.where(np.isnan(x), np.nan, low)
         return low / at_risk, high / at_risk
 
 
@@ -131,12 +132,13 @@ def poisson_ratio(
 ) -> Ratio:
     """The first rate over the second, given their sum: an exact binomial.
 
-    Ends are 0 or infinite where one side has no events.
+    Ends are 0 or infinite where one side has no events; no ratio where one side was
+    never exposed.
     """
     from scipy.stats import binomtest
 
     total = count_1 + count_2
-    if total == 0:
+    if total == 0 or exposure_1 <= 0 or exposure_2 <= 0:
         return Ratio(ratio=math.nan, low=0.0, high=math.inf, p=1.0)
     share = exposure_1 / (exposure_1 + exposure_2)
     low, high = clopper_pearson(count_1, total, cover)
@@ -164,7 +166,8 @@ def design_effect(
     From sums over patients of n, x, n^2 and x^2/n, so that no row of any patient is
     needed: intraclass correlation by one-way analysis of variance, then
     1 + (m - 1) rho with m the size of the cluster a treatment lies in on average.
-    1 where every patient has one treatment or all answers agree.
+    1 where every patient has one treatment or all answers agree. All treatments of a
+    single patient tell as much as one.
     """
     k, total, x = (np.asarray(v, float) for v in (clusters, n, count))
     n2 = np.asarray(squares_of_n, float)
@@ -175,7 +178,8 @@ def design_effect(
         m0 = (total - n2 / total) / (k - 1)
         rho = (between - within) / (between + (m0 - 1) * within)
         effect = 1 + (n2 / total - 1) * np.clip(rho, 0.0, 1.0)
-    return np.where(np.isfinite(effect), np.maximum(effect, 1.0), 1.0)
+    effect = np.where(np.isfinite(effect), np.maximum(effect, 1.0), 1.0)
+    return np.where((k == 1) & (total > 1), total, effect)
 
 
 def corrected_share(flagged: int, n: int, sensitivity: float, specificity: float):

@@ -45,11 +45,15 @@ def stratified_mean(
 def stratified_share(size: ArrayLike, sampled: ArrayLike, count: ArrayLike) -> Estimate:
     """The share of all charts from counts in each stratum's sample.
 
-    Strata of one chart have no spread of their own and take that of a half.
+    Strata of one chart have no spread of their own and take that of a half; strata
+    whose charts are all alike take that of half a chart more on either side, since no
+    spread seen is not the same as none.
     """
     n, x = np.asarray(sampled, float), np.asarray(count, float)
     p = x / n
-    variance = np.where(n > 1, n * p * (1 - p) / np.maximum(n - 1, 1), 0.25)
+    alike = (x == 0) | (x == n)
+    about = np.where(alike, (x + 0.5) / (n + 1), p)
+    variance = np.where(n > 1, n * about * (1 - about) / np.maximum(n - 1, 1), 0.25)
     done = stratified_mean(size, n, p, variance)
     low, high = max(done.low, 0.0), min(done.high, 1.0)
     return Estimate(mean=done.mean, se=done.se, low=low, high=high)
@@ -81,12 +85,14 @@ def drawn(ids: ArrayLike, n: int, seed: int) -> np.ndarray:
     return np.sort(np.random.default_rng(seed).permutation(whole)[:n])
 
 
-def charts_to_find_one(total: int | None, wrong: int, sure: float = 0.95) -> int:
+def charts_to_find_one(total: int | None, wrong: int, sure: float = 0.95) -> int | None:
     """Fewest charts that hold at least one of ``wrong`` among ``total``, so sure.
 
     Exact hypergeometric; with ``total`` None the lot is endless and ``wrong`` is its
-    share in percent.
+    share in percent. None where there is no such chart to find.
     """
+    if wrong <= 0:
+        return None
     if total is None:
         return math.ceil(math.log(1 - sure) / math.log(1 - wrong / 100))
     n = np.arange(1, total + 1)

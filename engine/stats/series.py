@@ -18,6 +18,7 @@ from engine.evidence.review import POINTS_TO_DRAW_COUNT, POINTS_TO_TEST_COUNT
 
 # A difference of two equal series is nothing, not the last bits of its arithmetic.
 _PLACES = 12
+_NOTHING = 1e-9
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -35,6 +36,8 @@ class Change:
     @property
     def shown(self) -> bool:
         """Whether both intervals leave out no change."""
+        if abs(self.value) < _NOTHING:
+            return False
         return (self.low_ols > 0 and self.low_hac > 0) or (
             self.high_ols < 0 and self.high_hac < 0
         )
@@ -69,7 +72,8 @@ def segmented(
     """y = b0 + b1 t + b2 after + b3 t after, t = 0 at the first point after.
 
     ``first_after``  place of the first point after the session
-    ``weights``      how many treatments each point stands on
+    ``weights``      how many treatments each point stands on; a point that stands on
+                     none is left out
     HAC              Newey-West with the small-sample correction
     Source           Wagner 2002, Linden 2015 (method); checked in
                      tests/published/review_methods.csv
@@ -80,12 +84,12 @@ def segmented(
 
     y = np.round(np.asarray(values, float), _PLACES)
     t = np.arange(len(y)) - float(first_after)
-    good = np.isfinite(y)
+    w = np.ones(len(y)) if weights is None else np.asarray(weights, float)
+    good = np.isfinite(y) & np.isfinite(w) & (w > 0)
     before, after = int((good & (t < 0)).sum()), int((good & (t >= 0)).sum())
     needed = int(POINTS_TO_DRAW_COUNT) if fewest is None else fewest
     if min(before, after) < needed:
         return _refused(before, after, needed, len(y))
-    w = np.ones(len(y)) if weights is None else np.asarray(weights, float)
     post = (t >= 0).astype(float)
     design = np.column_stack([np.ones(len(y)), t, post, t * post])
     model = sm.WLS(y[good], design[good], weights=w[good])
@@ -119,14 +123,18 @@ def step_in_counts(
 ) -> tuple[float, float, float, float]:
     """Rate ratio of a step in counts with its interval, scaled by Pearson's phi.
 
-    Gives ratio, low, high (widened by the square root of phi where above 1) and phi.
+    Gives ratio, low, high (widened by the square root of phi where above 1) and phi;
+    four NaN where one side has no events or an exposure is not above 0.
     Source   Lopez Bernal, Cummins and Gasparrini 2017; checked in
              tests/published/review_methods.csv
     """
     import statsmodels.api as sm
     from scipy.special import ndtri
 
-    y = np.asarray(counts, float)
+    y, later = np.asarray(counts, float), np.asarray(after, bool)
+    told = y[later].sum() > 0 and y[~later].sum() > 0
+    if not told or not (np.asarray(exposure, float) > 0).all():
+        return math.nan, math.nan, math.nan, math.nan
     design = np.column_stack(
         [np.ones(len(y)), np.asarray(after, float), np.arange(len(y), dtype=float)]
     )

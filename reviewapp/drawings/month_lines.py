@@ -224,8 +224,8 @@ def _how(each: Line) -> tuple[str, ...]:
     if run.signal is not None:
         made.append(
             f"Run rules: longest run {run.longest_run} (up to {run.run_limit}),"
-            f" crossings {run.crossings} (at least {run.crossings_limit}); without any"
-            f" change they signal in {100 * run.false_alarm_frac:.1f} % of series."
+            f" crossings {run.crossings} (at least {run.crossings_limit}); with no"
+            f" change they signal in some {100 * run.false_alarm_frac:.1f} % of series."
         )
     else:
         made.append(
