@@ -390,15 +390,15 @@ def other_history(incident: incident_review.Incident) -> OtherHistory:
     )
 
 
-def kept_scenarios() -> list[Scenario]:
-    """Scenarios kept in the journal that still fit the log."""
-    kept = []
+def kept_scenarios() -> tuple[list[Scenario], list[str]]:
+    """Scenarios kept in the journal, and why others of them cannot be read."""
+    kept, refused = [], []
     for entry in journal().standing("scenario"):
         try:
             kept.append(scenario_from(entry.new, f"journal entry {entry.seq}"))
-        except EngineError:
-            continue
-    return kept
+        except EngineError as problem:
+            refused.append(str(problem))
+    return kept, refused
 
 
 def comparison(scenario: Scenario, since: str, until: str) -> Comparison:

@@ -16,5 +16,6 @@ def test_the_gate_runs_exactly_the_test_command_of_the_readme():
 def test_the_job_the_cautions_and_the_picture_are_there():
     assert "Findings need clinical confirmation" in README
     assert "licensed practice decide" in README
+    assert "![" in README
     for picture in re.findall(r"!\[[^\]]+\]\(([^)]+)\)", README):
         assert (ROOT / picture).exists(), picture

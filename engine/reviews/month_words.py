@@ -59,11 +59,20 @@ def sentence(
     return " ".join(parts)
 
 
+EVENTS = "I19"  # flow-sensor events: too grave to wait for a limit
+
+
 def happened(lines: tuple[Line, ...]) -> str:
-    told = [each.says for each in lines if each.look and each.value is not None]
+    """What is to be looked at, and every month in which a flow sensor failed."""
+    told = [each.says for each in lines if each.look and each.value is not None][:4]
+    told += [
+        each.says
+        for each in lines
+        if each.indicator.id == EVENTS and each.count > 0 and each.says not in told
+    ]
     if not told:
         return "Nothing lies outside its limits or past the figure it is held against."
-    return " ".join(told[:4])
+    return " ".join(told)
 
 
 def changed(lines: tuple[Line, ...]) -> str:

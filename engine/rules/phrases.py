@@ -188,6 +188,14 @@ def _clock_limit(row: Row, policy: Policy) -> str:
     return measured(policy.sensors.clock_offset_limit_s / S_PER_MIN, "min")
 
 
+def _bias_flow_origin(row: Row, policy: Policy) -> str:
+    """Behind a bias flow, where the figure comes from; nothing if unknown."""
+    assumed = row.get("bias_flow_assumed")
+    if not is_logged(assumed):
+        return ""
+    return " (the ventilator's default, not charted)" if assumed else " (as charted)"
+
+
 def _blank_fields(row: Row, policy: Policy) -> str:
     batch = batch_of_one(row)
     blank = [
@@ -224,6 +232,7 @@ PHRASES: dict[str, Callable[[Row, Policy], str]] = {
     "placement_band": _of_rows(_band),
     "best_site_class": _best_class,
     "interruption": _interruption,
+    "bias_flow_origin": _bias_flow_origin,
     "run_time_allowed": _run_time,
     "unsuited_note": _unsuited,
     "drug_named": _drug_named,

@@ -242,18 +242,21 @@ def _harm_and_actions(incident: Incident) -> None:
     rate, decide = st.columns(2, gap="large")
     with rate, entry.form("harm"):
         st.markdown("**Rate the harm**; two raters, neither seeing the other's first.")
-        harm = st.selectbox("Harm", [*HARMS.split(), "unknown"])
+        harm = st.selectbox("Harm", [*HARMS.split(), "unknown"], index=None)
         reason = st.text_input("Reason")
         signed = entry.signature()
         if st.form_submit_button("Keep the rating"):
-            new = {"harm": harm}
-            entry.keep(
-                "harm", signed, action="note", object=about, new=new, reason=reason
-            )
+            if harm is None:
+                st.warning("Choose the harm, then keep the rating.")
+            else:
+                new: dict[str, Any] = {"harm": harm}
+                entry.keep(
+                    "harm", signed, action="note", object=about, new=new, reason=reason
+                )
     with decide, entry.form("action"):
         st.markdown("**Decide an action**")
         text = st.text_input("Action")
-        strength = st.selectbox("Strength", STRENGTHS)
+        strength = st.selectbox("Strength", STRENGTHS, index=None)
         owner = st.text_input("Owner (role, not a name)")
         measure = st.text_input("Measured by")
         due = st.date_input("Due", value=None)
@@ -266,10 +269,10 @@ def _harm_and_actions(incident: Incident) -> None:
                 "measure": measure,
                 "due": str(due or ""),
             }
-            if text.strip():
+            if text.strip() and strength:
                 entry.keep("action", signed, action="decision", object=about, new=new)
             else:
-                st.warning("Say what is decided, then keep it.")
+                st.warning("Say what is decided and how strong it is, then keep it.")
 
 
 def _sign_off(incident: Incident) -> None:

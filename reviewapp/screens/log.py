@@ -71,7 +71,7 @@ def _refused() -> None:
     )
     reasons.insert(1, "Why", [BAD_ROW_CODES.get(c, "") for c in reasons["code"]])
     st.dataframe(
-        reasons.rename(columns={"code": "Code", "table": "Table", "column": "Column"}),
+        reasons.rename(columns=str.capitalize),
         hide_index=True,
         width="stretch",
     )

@@ -249,7 +249,7 @@ def _decisions(month: Month) -> None:
             ["the whole month", *(f"{each.id} {each.title}" for each in INDICATORS)],
         )
         text = st.text_input("What is decided")
-        strength = st.selectbox("Strength", STRENGTHS)
+        strength = st.selectbox("Strength", STRENGTHS, index=None)
         owner = st.text_input("Owner (role, not a name)")
         measure = st.text_input("Measured by")
         due = st.date_input("Due", value=None)
@@ -263,11 +263,11 @@ def _decisions(month: Month) -> None:
                 "measure": measure,
                 "due": str(due or ""),
             }
-            if text.strip():
+            if text.strip() and strength:
                 on = f"month:{month.month}{place}"
                 entry.keep("decision", signed, action="decision", object=on, new=new)
             else:
-                st.warning("Say what is decided, then keep it.")
+                st.warning("Say what is decided and how strong it is, then keep it.")
     _freeze_baseline(month)
 
 

@@ -56,7 +56,10 @@ def show() -> None:
 
 def _chosen() -> Scenario | None:
     ready = {each.name: each for each in ready_scenarios()}
-    kept = {each.name: each for each in data.kept_scenarios()}
+    readable, refused = data.kept_scenarios()
+    kept = {each.name: each for each in readable}
+    for reason in refused:
+        st.caption(parts.plain(f"Not offered: {reason}"))
     known = {**ready, **kept}
     choices = [*known, OWN, WRITTEN]
     asked = st.query_params.get("scenario")

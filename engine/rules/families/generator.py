@@ -90,9 +90,8 @@ GE03 = Rule(
     columns=("generator", "synchrony", "site", "bias_flow_lpm", "bias_flow_assumed"),
     when=all_of(generator_is_nebulizer, bias_flow_runs),
     fires=all_of(at_the_wye, output_is_continuous),
-    says="{generator} with {synchrony} {site} while {bias_flow_lpm} of bias flow ran "
-    "(taken from the ventilator's default: {bias_flow_assumed}): part of what is made "
-    "in exhalation is swept past the patient.",
+    says="{generator} with {synchrony} {site} while {bias_flow_lpm} of bias flow ran"
+    "{bias_flow_origin}: part of what is made in exhalation is swept past the patient.",
     would_change="No bias flow in that mode, or output with inspiration only.",
 )
 
