@@ -16,7 +16,7 @@ from engine.reviews.figures import month_words
 from engine.reviews.incident_words import local
 from engine.rules import ALL_RULES, rule_of
 from engine.rules.phrases import batch_of_one
-from engine.rules.wording import cited, is_logged, published, shown
+from engine.rules.wording import NOT_LOGGED, cited, is_logged, published, shown
 from reviewapp import data, entry, parts, tables, theme
 from reviewapp.drawings.circuit import band, circuit_svg, drawing_of
 from reviewapp.drawings.treatment import sites_svg, split_svg
@@ -413,7 +413,7 @@ def _sliders(row: dict[str, Any]) -> None:
         return
     st.caption(
         "An explanation of the estimate, not advice: it says nothing of what should be "
-        "set for a patient."
+        "set for a patient. What was not logged stays assumed until it is moved."
     )
     changed = dict(row)
     first, second, third = st.columns(3)
@@ -424,21 +424,26 @@ def _sliders(row: dict[str, Any]) -> None:
         (first, "distance_from_wye_cm", 0.0, 150.0, 5.0),
     ):
         logged = row.get(name)
-        start = float(logged) if is_logged(logged) else low
-        changed[name] = place.slider(
-            labels()[name],
+        start = min(max(float(logged), low), high) if is_logged(logged) else low
+        moved = place.slider(
+            labels()[name] if is_logged(logged) else f"{labels()[name]} (not logged)",
             low,
             high,
-            min(max(start, low), high),
+            start,
             step,
             key=f"vary_{name}_{row['treatment_id']}",
         )
-    changed["expiratory_filter"] = second.selectbox(
+        if moved != start:
+            changed[name] = moved
+    states = ["present", "absent", NOT_LOGGED]
+    state = row.get("expiratory_filter")
+    chosen = second.selectbox(
         "Expiratory filter",
-        ["present", "absent"],
-        index=0 if row.get("expiratory_filter") == "present" else 1,
+        states,
+        index=states.index(state) if state in states else 2,
         key=f"vary_filter_{row['treatment_id']}",
     )
+    changed["expiratory_filter"] = None if chosen == NOT_LOGGED else chosen
     found = {name: values[0] for name, values in balance(batch_of_one(changed)).items()}
     varied = {**changed, **found, "difference_shown": 0}
     st.markdown(

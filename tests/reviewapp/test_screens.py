@@ -1,5 +1,6 @@
 """Every screen opens on the demo, on each case, on an empty and on a one-row log."""
 
+import re
 from pathlib import Path
 
 import pandas as pd
@@ -181,3 +182,25 @@ def test_free_text_of_a_log_never_becomes_markup(tmp_path, monkeypatch):
         assert "<img src=x" not in words_of(opened(screen))
         assert "<b>bold" not in words_of(opened(screen))
     st.cache_resource.clear()
+
+
+def test_a_slider_changes_nothing_until_it_is_moved():
+    at = opened("treatments", log="case-jet_at_the_y", treatment="T1")
+    first = next(m.value for m in at.markdown if "Circuit: " in str(m.value))
+    at.toggle(key="vary").set_value(True).run()
+    assert not at.exception
+    drawn = [
+        m.value
+        for m in at.markdown
+        if "aria-label='Circuit: " in str(m.value)
+        or 'aria-label="Circuit: ' in str(m.value)
+    ]
+    words = [re.search(r'aria-label="(Circuit: [^"]*)"', d).group(1) for d in drawn]
+    assert words[0] == words[-1]
+    assert first == drawn[0]
+    slider = next(s for s in at.slider if s.label.startswith("Bias flow"))
+    slider.set_value(slider.min).run()
+    assert not at.exception
+    drawn = [m.value for m in at.markdown if 'aria-label="Circuit: ' in str(m.value)]
+    words = [re.search(r'aria-label="(Circuit: [^"]*)"', d).group(1) for d in drawn]
+    assert words[0] != words[-1]
