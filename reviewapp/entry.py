@@ -8,6 +8,7 @@ import streamlit as st
 from streamlit.delta_generator import DeltaGenerator
 
 from engine.errors import EngineError
+from engine.reviews.incident_words import STRENGTHS
 from reviewapp import data, parts
 
 ROLES = ("quality lead", "educator", "incident reviewer", "clinical engineer", "other")
@@ -30,6 +31,32 @@ def signature() -> tuple[str, str]:
     )
     role = right.selectbox("Role", ROLES, index=ROLES.index(last_role))
     return who.strip(), role
+
+
+def decision() -> dict[str, str]:
+    """What is decided, how strong it is, and who sees to it by when."""
+    text = st.text_input("What is decided")
+    strength = st.selectbox("Strength", STRENGTHS, index=None)
+    owner = st.text_input("Owner (role, not a name)")
+    measure = st.text_input("Measured by")
+    due = st.date_input("Due", value=None)
+    return {
+        "text": text.strip(),
+        "strength": strength or "",
+        "owner_role": owner,
+        "measure": measure,
+        "due": str(due or ""),
+    }
+
+
+def keep_decision(
+    name: str, signed: tuple[str, str], about: str, decided: dict[str, str]
+) -> None:
+    """Keeps a decision that says what it is and how strong; asks for the rest."""
+    if decided["text"] and decided["strength"]:
+        keep(name, signed, action="decision", object=about, new=decided)
+    else:
+        st.warning("Say what is decided and how strong it is, then keep it.")
 
 
 def keep(

@@ -13,7 +13,7 @@ from engine.columns import HARMS, SENSORS
 from engine.errors import EngineError
 from engine.reviews.explanations import Explanation
 from engine.reviews.incident import Incident
-from engine.reviews.incident_words import STRENGTHS, local
+from engine.reviews.incident_words import local
 from reviewapp import data, entry, parts, tables, theme
 from reviewapp.drawings.incident import burden_svg, timeline_svg
 from reviewapp.reports.incident import GRADE_MARKS, ROLES, incident_report
@@ -255,24 +255,10 @@ def _harm_and_actions(incident: Incident) -> None:
                 )
     with decide, entry.form("action"):
         st.markdown("**Decide an action**")
-        text = st.text_input("Action")
-        strength = st.selectbox("Strength", STRENGTHS, index=None)
-        owner = st.text_input("Owner (role, not a name)")
-        measure = st.text_input("Measured by")
-        due = st.date_input("Due", value=None)
+        decided = entry.decision()
         signed = entry.signature()
         if st.form_submit_button("Keep the decision"):
-            new = {
-                "text": text,
-                "strength": strength,
-                "owner_role": owner,
-                "measure": measure,
-                "due": str(due or ""),
-            }
-            if text.strip() and strength:
-                entry.keep("action", signed, action="decision", object=about, new=new)
-            else:
-                st.warning("Say what is decided and how strong it is, then keep it.")
+            entry.keep_decision("action", signed, about, decided)
 
 
 def _sign_off(incident: Incident) -> None:

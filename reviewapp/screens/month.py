@@ -7,7 +7,6 @@ import streamlit as st
 from engine.errors import EngineError
 from engine.reviews.chart_check import CHART, draw_sample
 from engine.reviews.figures import month_words
-from engine.reviews.incident_words import STRENGTHS
 from engine.reviews.indicators import INDICATORS
 from engine.reviews.month import Month
 from engine.reviews.month_journal import differences
@@ -248,26 +247,12 @@ def _decisions(month: Month) -> None:
             "About",
             ["the whole month", *(f"{each.id} {each.title}" for each in INDICATORS)],
         )
-        text = st.text_input("What is decided")
-        strength = st.selectbox("Strength", STRENGTHS, index=None)
-        owner = st.text_input("Owner (role, not a name)")
-        measure = st.text_input("Measured by")
-        due = st.date_input("Due", value=None)
+        decided = entry.decision()
         signed = entry.signature()
         if st.form_submit_button("Keep the decision"):
             place = "" if about == "the whole month" else f":{about.split()[0]}"
-            new = {
-                "text": text,
-                "strength": strength,
-                "owner_role": owner,
-                "measure": measure,
-                "due": str(due or ""),
-            }
-            if text.strip() and strength:
-                on = f"month:{month.month}{place}"
-                entry.keep("decision", signed, action="decision", object=on, new=new)
-            else:
-                st.warning("Say what is decided and how strong it is, then keep it.")
+            on = f"month:{month.month}{place}"
+            entry.keep_decision("decision", signed, on, decided)
     _freeze_baseline(month)
 
 

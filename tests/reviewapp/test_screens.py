@@ -204,3 +204,26 @@ def test_a_slider_changes_nothing_until_it_is_moved():
     drawn = [m.value for m in at.markdown if 'aria-label="Circuit: ' in str(m.value)]
     words = [re.search(r'aria-label="(Circuit: [^"]*)"', d).group(1) for d in drawn]
     assert words[0] != words[-1]
+
+
+def test_a_decision_says_how_strong_it_is_before_it_is_kept():
+    at = opened("month", log="case-a_month_of_nights")
+    form = "decision_0"
+    text = next(
+        t for t in at.text_input if t.form_id == form and t.label == "What is decided"
+    )
+    text.set_value("Put a filter in every nebulizer bag")
+    signer(at, form).set_value("QL")
+    submitted(at, form).run()
+    assert [w.value for w in at.warning] == [
+        "Say what is decided and how strong it is, then keep it."
+    ]
+    strength = next(
+        b for b in at.selectbox if b.form_id == form and b.label == "Strength"
+    )
+    strength.select("stronger")
+    submitted(at, form).run()
+    assert not at.exception
+    kept = next(d.value for d in at.dataframe if "Owner (role)" in d.value.columns)
+    assert kept["What"].tolist() == ["Put a filter in every nebulizer bag"]
+    assert kept["Strength"].tolist() == ["stronger"]
