@@ -44,6 +44,10 @@ class JournalBroken(EngineError):
     """A journal entry was altered, removed or reordered."""
 
 
+class OutputUnwritable(EngineError):
+    """A file or folder asked for cannot be written."""
+
+
 class SharingRefused(EngineError):
     """A copy for sharing would still name a device, a person or a day."""
 

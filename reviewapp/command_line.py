@@ -12,7 +12,7 @@ import sys
 from collections.abc import Callable, Sequence
 from datetime import UTC, datetime
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NoReturn
 
 from engine.errors import EngineError, UnknownId
 
@@ -34,7 +34,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
     try:
         return chosen.run(chosen) or DONE
     except EngineError as problem:
-        print(f"aerosol-review: {problem}", file=sys.stderr)
+        print(f"aerosol-review: {_one_line(problem)}", file=sys.stderr)
         return BAD_INPUT
     except KeyboardInterrupt:
         print("aerosol-review: stopped; nothing half-written is kept", file=sys.stderr)
@@ -45,15 +45,29 @@ def main(arguments: Sequence[str] | None = None) -> int:
         if os.environ.get("AEROSOL_REVIEW_TRACE"):
             raise
         print(
-            f"aerosol-review: a fault of ours ({type(fault).__name__}: {fault}); "
+            f"aerosol-review: a fault of ours ({type(fault).__name__}: "
+            f"{_one_line(fault)}); "
             "set AEROSOL_REVIEW_TRACE=1 to see where",
             file=sys.stderr,
         )
         return FAULT
 
 
+def _one_line(problem: object) -> str:
+    """A message that moves no cursor and breaks no line, whatever a file is called."""
+    shown = "".join(c if c.isprintable() else " " for c in str(problem))
+    return " ".join(shown.split())
+
+
+class _OneLine(argparse.ArgumentParser):
+    """A parser whose complaint is one line."""
+
+    def error(self, message: str) -> NoReturn:
+        self.exit(BAD_INPUT, f"aerosol-review: {_one_line(message)}; see --help\n")
+
+
 def _parser() -> argparse.ArgumentParser:
-    parser = argparse.ArgumentParser(prog="aerosol-review", description=ABOUT)
+    parser = _OneLine(prog="aerosol-review", description=ABOUT)
     parser.set_defaults(run=_open_demo)
     commands = parser.add_subparsers(title="commands", metavar="")
 
@@ -65,13 +79,15 @@ def _parser() -> argparse.ArgumentParser:
     one.add_argument("log", type=Path, metavar="LOG")
     one.add_argument("--months", type=_positive, default=6)
     one.add_argument("--treatments-per-month", type=_positive, default=800)
-    one.add_argument("--seed", type=int, default=1)
+    one.add_argument("--seed", type=_whole, default=1)
 
     one = add("intake", _intake, "raw exports -> log, with a load report")
     one.add_argument("source", type=Path, nargs="+", metavar="SOURCE")
     one.add_argument("--map", type=Path, metavar="MAP", help="how to read the exports")
     one.add_argument("--into", type=Path, required=True, metavar="LOG")
-    one.add_argument("--site-zone", default="UTC", metavar="ZONE")
+    one.add_argument(
+        "--site-zone", metavar="ZONE", help="default: the map's zone, else UTC"
+    )
 
     one = add("replay", _replay, "balance, answers, findings and run.json")
     one.add_argument("log", type=Path, metavar="LOG")
@@ -116,8 +132,17 @@ def _judged(one: argparse.ArgumentParser) -> None:
     one.add_argument("--scenario", metavar="SCENARIO", help="a name or a TOML file")
 
 
+def _whole(text: str) -> int:
+    try:
+        return int(text)
+    except ValueError:
+        raise argparse.ArgumentTypeError(
+            f"must be a whole number; got {text[:40]}"
+        ) from None
+
+
 def _positive(text: str) -> int:
-    value = int(text)
+    value = _whole(text)
     if value < 1:
         raise argparse.ArgumentTypeError(f"must be at least 1; got {value}")
     return value
@@ -155,11 +180,12 @@ def _demo(chosen: argparse.Namespace) -> None:
 
 def _intake(chosen: argparse.Namespace) -> int:
     from engine.intake import take_in
+    from engine.intake.mapping import load_map
 
     report = take_in(
         chosen.source,
         chosen.into,
-        site_zone=chosen.site_zone,
+        site_zone=chosen.site_zone or load_map(chosen.map).site_zone or "UTC",
         created_at=datetime.now(UTC).replace(tzinfo=None),
         mapping=chosen.map,
     )
@@ -244,7 +270,7 @@ def _bench_line(result: Result) -> str:
 def _journal(chosen: argparse.Namespace) -> None:
     from engine.journal import open_journal
 
-    if not chosen.file.exists():
+    if not os.path.exists(chosen.file):
         raise UnknownId(f"there is no journal {chosen.file}")
     journal = open_journal(chosen.file)
     journal.check()

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import unicodedata
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from datetime import datetime
@@ -92,6 +93,16 @@ def banner_of(
     )
 
 
+def printable(words: str) -> str:
+    """Words without characters that no page may hold: controls, halves of pairs."""
+    return "".join(
+        c
+        if c in "\n\t" or unicodedata.category(c) not in {"Cc", "Cs", "Cn"}
+        else "\ufffd"
+        for c in words
+    )
+
+
 def page(title: str, banner: Banner, sections: Sections) -> str:
     """The whole page; section bodies are HTML already, titles are not."""
     body = "".join(
@@ -99,7 +110,7 @@ def page(title: str, banner: Banner, sections: Sections) -> str:
         for head, inside in sections
     )
     stamp = "".join(f"<p>{escape(line)}</p>" for line in banner.lines)
-    return (
+    return printable(
         '<!doctype html><html lang="en"><head><meta charset="utf-8">'
         '<meta name="viewport" content="width=device-width, initial-scale=1">'
         f"<title>{escape(title)}</title><style>{_CSS}</style></head><body>"

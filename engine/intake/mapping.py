@@ -27,6 +27,7 @@ from pathlib import Path
 from typing import Any
 from zoneinfo import ZoneInfo
 
+import duckdb
 from pydantic import BaseModel, ConfigDict, Field, ValidationError
 
 from engine.columns import RECORD_TABLES, Column, words_of
@@ -69,8 +70,10 @@ def load_map(given: str | os.PathLike[str] | Dict[str, Any] | None) -> SiteMap:
         content = tomllib.loads(Path(given).read_text("utf-8-sig"))
     except OSError as error:
         raise SourceUnreadable(f"{name} cannot be read: {error.strerror}") from None
-    except (tomllib.TOMLDecodeError, UnicodeDecodeError) as error:
+    except ValueError as error:
         raise SourceUnreadable(f"{name} is not a TOML file: {error}") from None
+    except RecursionError:
+        raise SourceUnreadable(f"{name} is not a TOML file: nested too deep") from None
     return _checked(content, name)
 
 
@@ -81,6 +84,7 @@ def zone_of(zone: str | None, name: str) -> str:
     """
     try:
         ZoneInfo(zone or "")
+        duckdb.execute("SELECT timezone(?, TIMESTAMP '2000-01-01')", [zone])
     except Exception:
         raise SourceUnreadable(
             f"{name} must be a time zone such as Europe/Berlin; got {zone or 'nothing'}"
@@ -110,9 +114,21 @@ def _checked(content: dict[str, Any], name: str) -> SiteMap:
                 f"{name}: units.{column} must be one of {', '.join(allowed)}; "
                 f"got {unit}"
             )
-    for column in found.times:
+    for column, pattern in found.times.items():
         _column(column, f"{name}: times", "time")
+        _check_pattern(pattern, f"{name}: times.{column}")
+    if found.site_zone is not None:
+        zone_of(found.site_zone, f"{name}: site_zone")
     return found
+
+
+def _check_pattern(pattern: str, where: str) -> None:
+    try:
+        duckdb.execute("SELECT try_strptime('2026-01-01', ?)", [pattern])
+    except duckdb.Error:
+        raise SourceUnreadable(
+            f"{where} must be a pattern such as %d.%m.%Y %H:%M; got {pattern}"
+        ) from None
 
 
 def _check_files(found: SiteMap, name: str) -> None:
@@ -127,24 +143,37 @@ def _check_files(found: SiteMap, name: str) -> None:
 
 def _check_columns(found: SiteMap, name: str) -> None:
     for theirs, ours in found.columns.items():
+        if not theirs.strip():
+            raise SourceUnreadable(f"{name}: columns holds an empty name")
         _column(ours, f"{name}: columns.{theirs}")
         if names_a_person(theirs):
             raise SourceUnreadable(
                 f"{name}: columns.{theirs} names a person; put an opaque token "
                 "in its place before intake"
             )
-    for ours in found.constants:
-        _column(ours, f"{name}: constants")
+    for ours, value in found.constants.items():
+        declared = _column(ours, f"{name}: constants")
+        if declared.kind == "word":
+            _one_of(value, declared.words, f"{name}: constants.{ours}")
 
 
 def _check_words(found: SiteMap, name: str) -> None:
     for column, words in found.words.items():
         declared = _column(column, f"{name}: words", "word", "yes_no")
         allowed = declared.words or _YES_NO
+        _refuse_two_of_one(words, f"{name}: words.{column}")
         for theirs, ours in words.items():
             _one_of(ours, allowed, f"{name}: words.{column}.{theirs}")
     for term, word in found.modes.items():
         _one_of(word, words_of("mode"), f"{name}: modes.{term}")
+
+
+def _refuse_two_of_one(words: dict[str, str], where: str) -> None:
+    """Capitals do not count in an export: one word may not mean two things."""
+    meant: dict[str, str] = {}
+    for theirs, ours in words.items():
+        if meant.setdefault(theirs.strip().lower(), ours) != ours:
+            raise SourceUnreadable(f"{where}: {theirs} is given two meanings")
 
 
 def _one_of(word: str, allowed: tuple[str, ...], where: str) -> None:

@@ -12,10 +12,12 @@ import csv
 import os
 from collections import Counter
 from dataclasses import dataclass
+from functools import partial
 from pathlib import Path
 
 import numpy as np
 import pyarrow as pa
+import pyarrow.compute as pc
 import pyarrow.csv as pa_csv
 import pyarrow.parquet as pa_parquet
 
@@ -90,6 +92,7 @@ def _read_csv(path: Path) -> Source:
         return "skip"
 
     heads, delimiter = _head(path, encoding)
+    _refuse_open_quotes(path, encoding, delimiter)
     columns = [f"c{i}" for i in range(len(heads))]
     try:
         cells = pa_csv.read_csv(
@@ -120,7 +123,50 @@ def _read_csv(path: Path) -> Source:
         raise
     numbers = np.arange(1, len(cells) + len(broken) + 1)
     numbers = np.setdiff1d(numbers, [row.row for row in broken])[1:]
-    return Source(path.name, heads, cells.slice(1), numbers, tuple(broken), encoding)
+    cells = cells.slice(1)
+    swallowed = _swallowed(cells, delimiter)
+    for place in np.flatnonzero(swallowed).tolist():
+        text = delimiter.join(str(cells[c][place]) for c in columns)
+        found = text.count(delimiter) + 1
+        broken.append(BrokenRow(int(numbers[place]), found, len(heads), text))
+    kept = cells.filter(pa.array(~swallowed))
+    return Source(path.name, heads, kept, numbers[~swallowed], tuple(broken), encoding)
+
+
+def _refuse_open_quotes(path: Path, encoding: str, delimiter: str) -> None:
+    """A file that ends inside quotation marks holds rows that look like one cell."""
+    with path.open("rb") as file:
+        marks = sum(
+            chunk.count(b'"') for chunk in iter(partial(file.read, _CHUNK_BYTES), b"")
+        )
+    if marks % 2 == 0:
+        return
+    with path.open(encoding=encoding, newline="") as lines:
+        reader = csv.reader(lines, delimiter=delimiter, strict=True)
+        try:
+            for _ in reader:
+                pass
+        except csv.Error:
+            raise SourceUnreadable(
+                f"{path}: a quotation mark is not closed, near line {reader.line_num}"
+            ) from None
+
+
+def _swallowed(cells: pa.Table, delimiter: str) -> np.ndarray:
+    """Rows with a cell that holds a line with as many columns as the file: a
+    quotation mark opened there has taken in the rows after it."""
+    found = np.zeros(len(cells), bool)
+    others = cells.num_columns - 1
+    if others < 2:
+        return found
+    for column in cells.columns:
+        broken_over = pc.match_substring(column, "\n").fill_null(False)
+        for place in np.flatnonzero(
+            broken_over.to_numpy(zero_copy_only=False)
+        ).tolist():
+            lines = str(column[place]).splitlines()[1:]
+            found[place] |= any(line.count(delimiter) >= others for line in lines)
+    return found
 
 
 def _read_parquet(path: Path) -> Source:
@@ -142,7 +188,7 @@ def _read_parquet(path: Path) -> Source:
 
 def _text(column: pa.ChunkedArray) -> pa.ChunkedArray:
     if pa.types.is_timestamp(column.type) and column.type.tz:
-        column = column.cast(pa.timestamp("us", "UTC"))
+        column = column.cast(pa.timestamp("us", "UTC"), safe=False)
     if pa.types.is_binary(column.type) or pa.types.is_large_binary(column.type):
         raise pa.ArrowInvalid("bytes are no text")
     return column.cast(pa.string())
@@ -150,6 +196,10 @@ def _text(column: pa.ChunkedArray) -> pa.ChunkedArray:
 
 def _encoding(path: Path) -> str:
     """utf-8 (with or without its mark) where the bytes are valid, else cp1252."""
+    with path.open("rb") as file:
+        head = file.read(_CHUNK_BYTES)
+    if head[:2] in {b"\xff\xfe", b"\xfe\xff"} or b"\0" in head:
+        raise SourceUnreadable(f"{path} is not UTF-8 but wider text; save it as UTF-8")
     for encoding in ("utf-8", "cp1252"):
         decoder = codecs.getincrementaldecoder(encoding)()
         try:

@@ -26,6 +26,7 @@ from engine.journal.entry import (
     LONGEST_ENTRY_BYTES,
     Entry,
     digest,
+    is_sound,
     line_of,
     written,
 )
@@ -223,10 +224,10 @@ def _entry(line: bytes, where: str) -> Entry:
         content = json.loads(line)
         entry = Entry(**content)
         same = line_of(entry) == line
-        zoned = datetime.fromisoformat(entry.at).tzinfo is not None
-    except (ValueError, TypeError, RecursionError):
+        fits = is_sound(entry)
+    except (ValueError, TypeError, RecursionError, OverflowError):
         raise JournalBroken(f"{where} is not a journal entry") from None
-    if not zoned:
+    if not fits:
         raise JournalBroken(f"{where} is not a journal entry")
     del content["hash"]
     if not same or digest(content) != entry.hash:

@@ -84,7 +84,7 @@ def written(
     if action not in ACTIONS:
         allowed = ", ".join(ACTIONS)
         raise EntryRefused(f"action must be one of {allowed}; got {action}")
-    if action == "verdict" and new not in VERDICTS:
+    if action == "verdict" and (not isinstance(new, str) or new not in VERDICTS):
         raise EntryRefused(f"verdict must be one of {', '.join(VERDICTS)}; got {new}")
     content = {
         "seq": seq,
@@ -108,6 +108,22 @@ def written(
             f"an entry must be at most {LONGEST_ENTRY_BYTES} bytes; got {size}"
         )
     return entry
+
+
+def is_sound(entry: Entry) -> bool:
+    """Whether each part is of its kind: a chain alone does not say so.
+
+    Raises   ValueError or OverflowError for a moment that is none.
+    """
+    texts = (entry.actor, entry.role, entry.action, entry.object, entry.reason)
+    if not all(isinstance(each, str) for each in texts) or type(entry.seq) is not int:
+        return False
+    if not all(clean("text", each) == each for each in texts):
+        return False
+    if datetime.fromisoformat(entry.at).tzinfo is None or entry.at_utc.year < 1:
+        return False
+    known = entry.action in ACTIONS and bool(entry.actor and entry.object)
+    return known and (entry.action != "verdict" or entry.new in list(VERDICTS))
 
 
 def line_of(entry: Entry) -> bytes:

@@ -160,6 +160,7 @@ def _site_zone(
         )
     try:
         ZoneInfo(zone or "")
+        connection.execute("SELECT timezone(?, TIMESTAMP '2000-01-01')", [zone])
     except Exception:
         shown = str(zone)[:60]
         raise LogUnreadable(

@@ -11,7 +11,7 @@ import hashlib
 import tomllib
 from importlib import resources
 from pathlib import Path
-from typing import Any
+from typing import Annotated, Any
 
 from pydantic import Field, ValidationError, field_validator
 
@@ -39,7 +39,7 @@ class Policy(Strict):
     name: str = Field(pattern=r"^[a-z0-9_]+$")
     title: str
     note: str = ""
-    weights: dict[str, float] = Field(default_factory=dict)
+    weights: dict[str, Annotated[float, Field(ge=0)]] = Field(default_factory=dict)
     shifts: Shifts
     cells: Cells
     records: Records
@@ -73,10 +73,11 @@ def load_policy(name_or_path: str | Path = "common_practice") -> Policy:
     """
     where, text = _text_of(name_or_path)
     try:
-        settings = tomllib.loads(text)
-    except tomllib.TOMLDecodeError as problem:
+        return policy_from(tomllib.loads(text), where)
+    except RecursionError:
+        raise PolicyInvalid(f"{where} is not valid TOML: nested too deep") from None
+    except ValueError as problem:
         raise PolicyInvalid(f"{where} is not valid TOML: {problem}") from None
-    return policy_from(settings, where)
 
 
 def policy_from(settings: dict[str, Any], where: str) -> Policy:
@@ -96,8 +97,8 @@ def _text_of(name_or_path: str | Path) -> tuple[str, str]:
         name = f"{name_or_path}.toml"
         return name, resources.files(__package__).joinpath(name).read_text("utf-8")
     try:
-        return Path(name_or_path).name, Path(name_or_path).read_text("utf-8")
-    except (OSError, UnicodeDecodeError):
+        return Path(name_or_path).name, Path(name_or_path).read_text("utf-8-sig")
+    except (OSError, ValueError):
         names = " or ".join(SHIPPED)
         raise PolicyInvalid(
             f"{name_or_path} is not a readable policy file; give a path, or {names}"

@@ -22,6 +22,9 @@ Strength = Literal["unanimous", "majority", "contested", "department"]
 BiasFlow = Literal["none", "present"]
 
 
+MOST_COUNT = 10_000_000  # beyond any department, and safely a whole number
+
+
 class Strict(BaseModel):
     model_config = ConfigDict(
         strict=True, extra="forbid", frozen=True, allow_inf_nan=False
@@ -128,7 +131,7 @@ class FilterLimits(Strict):
     reference_flow_lpm: float = Field(gt=0)
     same_flow_within_frac: float = Field(gt=0, lt=1)
     reading_window_h: float = Field(gt=0)
-    readings_for_a_trend_count: int = Field(ge=5)
+    readings_for_a_trend_count: int = Field(ge=5, le=MOST_COUNT)
     rising_p: float = Field(gt=0, lt=1)
     unlogged_change_p: float = Field(gt=0, lt=1)
     hours_by_drug_class: dict[str, Hours]
@@ -155,7 +158,7 @@ class Exposure(Strict):
 class Sensors(Strict):
     """Limits for the expiratory sensors and the checks they are due."""
 
-    unfiltered_since_check_count: int = Field(ge=1)
+    unfiltered_since_check_count: int = Field(ge=1, le=MOST_COUNT)
     check_interval_h: float = Field(gt=0)
     volume_ratio_tolerance_frac: float = Field(gt=0, lt=1)
     drift_weight: float = Field(gt=0, le=1)
@@ -199,7 +202,7 @@ class Estimate(Strict):
     """How far apart two estimates must lie before a difference is shown."""
 
     no_difference_ratio: float = Field(gt=1)
-    most_assumptions_count: int = Field(ge=0)
+    most_assumptions_count: int = Field(ge=0, le=MOST_COUNT)
 
 
 class Records(Strict):
@@ -224,10 +227,10 @@ class Records(Strict):
 class Cells(Strict):
     """Smallest groups that may be shown, so that no one person can be read off."""
 
-    treatments_count: int = Field(ge=1)
-    patients_count: int = Field(ge=1)
-    percent_needs_count: int = Field(ge=1)
-    shared_smallest_count: int = Field(ge=1)
+    treatments_count: int = Field(ge=1, le=MOST_COUNT)
+    patients_count: int = Field(ge=1, le=MOST_COUNT)
+    percent_needs_count: int = Field(ge=1, le=MOST_COUNT)
+    shared_smallest_count: int = Field(ge=1, le=MOST_COUNT)
 
 
 def _clock(value: str) -> str:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
@@ -15,6 +15,7 @@ import pyarrow as pa
 import pyarrow.parquet as pq
 
 from engine.columns import words_of
+from engine.errors import OutputUnwritable
 from engine.log import Log
 from engine.log.context import build_context
 from engine.physics.balance import alternatives, balance
@@ -133,27 +134,59 @@ def replay_to(
     """Replays into balance, answers and findings Parquet files, and run.json.
 
     Memory does not grow with the log: each batch is written and let go. Returns what
-    run.json holds.
+    run.json holds; an earlier run stays until this one is whole.
+    Raises   OutputUnwritable if the folder cannot be written.
     """
     policy = changed_policy(policy, scenario)
+    _make_room(folder)
     own = _prepared(log, policy, scenario, progress)
-    folder.mkdir(parents=True, exist_ok=True)
     files: dict[str, pq.ParquetWriter] = {}
     try:
         for done in _batches(own, policy, progress, batch_rows):
             for name, table in _tables(own, done).items():
                 if name not in files:
                     files[name] = pq.ParquetWriter(
-                        folder / f"{name}.parquet", table.schema
+                        _building(folder, name), table.schema
                     )
                 files[name].write_table(table)
-    finally:
         for writer in files.values():
             writer.close()
         stamp = _stamp(own, policy, scenario)
+        _put_in_place(folder, files, stamp)
+    except OSError as problem:
+        raise OutputUnwritable(f"{folder} cannot be written: {problem}") from None
+    finally:
+        for name, writer in files.items():
+            writer.close()
+            _building(folder, name).unlink(missing_ok=True)
         own.close()
-    (folder / "run.json").write_text(json.dumps(stamp, indent=2), "utf-8")
     return stamp
+
+
+def _make_room(folder: Path) -> None:
+    """The folder, ready to be written.
+
+    Raises   OutputUnwritable if it cannot be.
+    """
+    try:
+        folder.mkdir(parents=True, exist_ok=True)
+        probe = _building(folder, "probe")
+        probe.touch()
+        probe.unlink()
+    except OSError as problem:
+        raise OutputUnwritable(f"{folder} cannot be written: {problem}") from None
+
+
+def _building(folder: Path, name: str) -> Path:
+    return folder / f".{name}.building"
+
+
+def _put_in_place(folder: Path, names: Iterable[str], stamp: dict[str, Any]) -> None:
+    """All files at once, run.json last: it stands for a run that is whole."""
+    (folder / "run.json").unlink(missing_ok=True)
+    for name in names:
+        _building(folder, name).replace(folder / f"{name}.parquet")
+    (folder / "run.json").write_text(json.dumps(stamp, indent=2), "utf-8")
 
 
 def _prepared(

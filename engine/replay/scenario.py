@@ -14,7 +14,7 @@ from typing import Any
 import duckdb
 from pydantic import BaseModel, ConfigDict, Field, ValidationError
 
-from engine.columns import TREATMENT, Column
+from engine.columns import TREATMENT, UNKNOWN, Column
 from engine.errors import PolicyInvalid, ScenarioInvalid
 from engine.policy import Policy, policy_from
 
@@ -50,8 +50,8 @@ def load_scenario(path: str | Path) -> Scenario:
     Raises   ScenarioInvalid naming the file, the entry and what it may hold.
     """
     try:
-        settings = tomllib.loads(Path(path).read_text("utf-8"))
-    except (OSError, UnicodeDecodeError, tomllib.TOMLDecodeError) as problem:
+        settings = tomllib.loads(Path(path).read_text("utf-8-sig"))
+    except (OSError, ValueError, RecursionError) as problem:
         raise ScenarioInvalid(f"{Path(path).name} cannot be read: {problem}") from None
     return scenario_from(settings, Path(path).name)
 
@@ -67,6 +67,8 @@ def scenario_from(settings: dict[str, Any], where: str = "scenario") -> Scenario
         first = problem.errors()[0]
         key = ".".join(str(part) for part in first["loc"])
         raise ScenarioInvalid(f"{where}: {key} {first['msg']}") from None
+    except RecursionError:
+        raise ScenarioInvalid(f"{where}: nested too deep") from None
     for fact in scenario.fact:
         _check_fact(fact, where)
     return scenario
@@ -92,27 +94,28 @@ def apply_facts(cursor: duckdb.DuckDBPyConnection, scenario: Scenario | None) ->
     """Puts a view ``treatment`` with the changed facts in front of the logged one."""
     if scenario is None or not scenario.fact:
         return
-    parameters: list[Any] = []
-    changed: dict[str, str] = {}
+    changed: dict[str, tuple[str, list[Any]]] = {}
     for fact in scenario.fact:
-        before = changed.get(fact.column, fact.column)
-        changed[fact.column] = _case(fact, before, parameters)
-    replaced = ", ".join(f"{sql} AS {column}" for column, sql in changed.items())
+        before = changed.get(fact.column, (fact.column, []))
+        changed[fact.column] = _case(fact, *before)
+    replaced = ", ".join(f"{sql} AS {column}" for column, (sql, _) in changed.items())
     cursor.execute(
         f"CREATE TABLE treatment_changed AS SELECT * REPLACE ({replaced})"
         " FROM treatment",
-        parameters,
+        [value for _, values in changed.values() for value in values],
     )
     cursor.execute("CREATE OR REPLACE VIEW treatment AS FROM treatment_changed")
 
 
-def _case(fact: Fact, before: str, parameters: list[Any]) -> str:
+def _case(fact: Fact, before: str, of_before: list[Any]) -> tuple[str, list[Any]]:
+    """SQL of the changed column and its values, in the order they stand in it."""
     column = TREATMENT.column(fact.column)
     clauses = ["true"]
+    values: list[Any] = []
     for name, words in fact.where.items():
-        clauses.append(f"list_contains(?, {name}::VARCHAR)")
-        parameters.append(list(words))
-    parameters.append(None if fact.value == "unknown" else fact.value)
+        clauses.append(f"list_contains(?, {in_words(TREATMENT.column(name))})")
+        values.append(list(words))
+    values.append(None if fact.value == UNKNOWN else fact.value)
     kind = {
         "word": f"{column.name}_words",
         "yes_no": "BOOLEAN",
@@ -120,23 +123,41 @@ def _case(fact: Fact, before: str, parameters: list[Any]) -> str:
         "count": "DOUBLE",
     }[column.kind]
     when = " AND ".join(clauses)
-    return f"CASE WHEN {when} THEN CAST(? AS {kind}) ELSE {before} END"
+    case = f"CASE WHEN {when} THEN CAST(? AS {kind}) ELSE {before} END"
+    return case, [*values, *of_before]
+
+
+def in_words(column: Column) -> str:
+    """SQL of a column as its word, so that what was not logged can be asked for."""
+    if column.kind == "yes_no":
+        told = f"CASE {column.name} WHEN true THEN 'yes' WHEN false THEN 'no' END"
+    else:
+        told = f"{column.name}::VARCHAR"
+    return f"coalesce({told}, '{UNKNOWN}')"
 
 
 def _check_fact(fact: Fact, where: str) -> None:
     column = _treatment_column(fact.column, where)
     if column.kind in _FIXED_KINDS:
         raise ScenarioInvalid(f"{where}: {fact.column} is not part of the setup")
-    if column.kind == "word":
-        _check_words(column, (str(fact.value),), where)
-    elif column.kind == "yes_no" and not isinstance(fact.value, bool):
-        raise ScenarioInvalid(f"{where}: {fact.column} must be true or false")
-    elif column.kind in {"number", "count"}:
-        _check_range(column, fact.value, where)
+    if fact.value != UNKNOWN:
+        _check_value(column, fact.value, where)
     for name, words in fact.where.items():
         limited = _treatment_column(name, where)
-        if limited.kind == "word":
-            _check_words(limited, words, where)
+        if limited.kind not in {"word", "yes_no"}:
+            raise ScenarioInvalid(
+                f"{where}: where.{name} must be a column of words or of yes and no"
+            )
+        _check_words(limited, words, where)
+
+
+def _check_value(column: Column, value: object, where: str) -> None:
+    if column.kind == "word":
+        _check_words(column, (str(value),), where)
+    elif column.kind == "yes_no" and not isinstance(value, bool):
+        raise ScenarioInvalid(f"{where}: {column.name} must be true or false")
+    elif column.kind in {"number", "count"}:
+        _check_range(column, value, where)
 
 
 def _treatment_column(name: str, where: str) -> Column:
@@ -149,11 +170,11 @@ def _treatment_column(name: str, where: str) -> Column:
 
 
 def _check_words(column: Column, words: tuple[str, ...], where: str) -> None:
+    known = column.words or ("yes", "no")
     for word in words:
-        if word not in column.words:
+        if word not in known and word != UNKNOWN:
             raise ScenarioInvalid(
-                f"{where}: {column.name} must be one of {', '.join(column.words)};"
-                f" got {word}"
+                f"{where}: {column.name} must be one of {', '.join(known)}; got {word}"
             )
 
 
@@ -161,9 +182,11 @@ def _check_range(column: Column, value: object, where: str) -> None:
     low, high = column.low, column.high
     is_number = isinstance(value, int | float) and not isinstance(value, bool)
     inside = is_number and low <= value <= high  # type: ignore[operator]
-    if not inside:
+    whole = column.kind != "count" or (is_number and float(value) % 1 == 0)  # type: ignore[arg-type]
+    if not inside or not whole:
+        what = "a whole number from" if column.kind == "count" else "from"
         raise ScenarioInvalid(
-            f"{where}: {column.name} must be from {low:g} to {high:g}; got {value}"
+            f"{where}: {column.name} must be {what} {low:g} to {high:g}; got {value}"
         )
 
 

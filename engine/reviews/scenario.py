@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Mapping
 from dataclasses import dataclass
 from importlib import resources
@@ -11,11 +12,13 @@ from typing import Any
 import numpy as np
 import pandas as pd
 
+from engine.columns import TREATMENT
 from engine.errors import NothingToReview, ScenarioInvalid
 from engine.log import Log
 from engine.policy import Policy
 from engine.replay import Replay, Scenario, load_scenario, replay
 from engine.replay.run import Progress
+from engine.replay.scenario import in_words
 from engine.reviews import scenario_rows as rows
 from engine.reviews.figures import (
     PER_CENT,
@@ -129,7 +132,7 @@ def find_scenario(name_or_path: str | Path) -> Scenario:
     ready = {each.name: each for each in ready_scenarios()}
     if str(name_or_path) in ready:
         return ready[str(name_or_path)]
-    if not Path(name_or_path).is_file():
+    if not os.path.isfile(name_or_path):
         raise ScenarioInvalid(
             f"{name_or_path} is no scenario file; give a path, or one of"
             f" {', '.join(sorted(ready))}"
@@ -305,7 +308,8 @@ def _facts(was: Replay, scenario: Scenario, asked: dict[str, Any]) -> pd.DataFra
         parameters: dict[str, Any] = {**asked, "value": _text(fact.value)}
         clauses = []
         for number, (name, words) in enumerate(fact.where.items()):
-            clauses.append(f"list_contains($w{number}, {name}::VARCHAR)")
+            told = in_words(TREATMENT.column(name))
+            clauses.append(f"list_contains($w{number}, {told})")
             parameters[f"w{number}"] = list(words)
         where = " AND ".join(["true", *clauses])
         found = was.frame(_FACT.format(column=fact.column, where=where), parameters)

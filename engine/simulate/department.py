@@ -10,12 +10,15 @@ import numpy as np
 import pandas as pd
 
 from engine.columns import TREATMENT
-from engine.log import write_log
+from engine.errors import EngineError, NothingToReview, OutputUnwritable
+from engine.log import open_log, write_log
 from engine.simulate import mounted, orders, service, setups
 from engine.simulate.draws import stream, unsaid
 from engine.simulate.places import ROOMS, SITE_ZONE, Places, places
 
 PEOPLE_PRESENT = 2
+
+INVENTED = "an invented department"
 
 
 @dataclass(frozen=True)
@@ -36,12 +39,13 @@ def invent(
 ) -> Department:
     """The department of this seed; the same seed gives the same rows.
 
-    Raises   ValueError for less than one month or ten treatments a month.
+    Raises   NothingToReview for less than one month or ten treatments a month, or a
+             seed below 0.
     """
-    if months < 1 or treatments_per_month < 10:
-        raise ValueError(
-            "an invented department needs at least 1 month and 10 treatments a month; "
-            f"got {months} and {treatments_per_month}"
+    if months < 1 or treatments_per_month < 10 or seed < 0:
+        raise NothingToReview(
+            "an invented department needs at least 1 month, 10 treatments a month and"
+            f" a seed from 0 on; got {months}, {treatments_per_month} and {seed}"
         )
     where = places(months, treatments_per_month, stream(seed, "places"))
     patients = orders.stays(where, seed)
@@ -73,19 +77,46 @@ def write_department(
 ) -> Department:
     """Writes the log, and its truth beside it as ``<name>.truth.csv``.
 
-    The same seed gives the same bytes. The app never opens the truth.
+    The same seed gives the same bytes. The app never opens the truth. Takes the place
+    of an earlier invented department only.
+    Raises   OutputUnwritable where something else is there, or nothing can be.
     """
+    path = Path(path)
+    truth = path.with_suffix(".truth.csv")
+    _refuse_to_overwrite(path, truth)
     made = invent(months, treatments_per_month, seed)
+    try:
+        _write(path, truth, made, seed)
+    except OSError as problem:
+        raise OutputUnwritable(f"{path} cannot be written: {problem}") from None
+    return made
+
+
+def _write(path: Path, truth: Path, made: Department, seed: int) -> None:
     write_log(
         path,
         made.tables,
         site_zone=SITE_ZONE,
         created_at=made.places.end.to_pydatetime(),
-        sources=f"an invented department, seed {seed}; nothing in it is real",
+        sources=f"{INVENTED}, seed {seed}; nothing in it is real",
     )
-    truth = Path(path).with_suffix(".truth.csv")
     made.truth.to_csv(truth, index=False, lineterminator="\n")
-    return made
+
+
+def _refuse_to_overwrite(path: Path, truth: Path) -> None:
+    if not path.parent.is_dir():
+        raise OutputUnwritable(f"{path.parent} is not a folder; make it first")
+    if not path.exists():
+        if truth.exists():
+            raise OutputUnwritable(f"{truth} is there already; give another name")
+        return
+    try:
+        with open_log(path) as log:
+            sources = str(log.frame("SELECT sources FROM log_info")["sources"].iloc[0])
+    except EngineError:
+        sources = ""
+    if not sources.startswith(INVENTED):
+        raise OutputUnwritable(f"{path} is there already; give another name")
 
 
 def _with_filter(treated: pd.DataFrame, uses: pd.DataFrame, seed: int) -> pd.DataFrame:

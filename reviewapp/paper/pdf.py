@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 import json
+import unicodedata
 from importlib import resources
 from typing import Any
 
 from engine.errors import SourceUnreadable
 from reviewapp.drawings.svg import FONT
 from reviewapp.paper.blocks import Block, blocks_of, words_in
-from reviewapp.report import CAUTION, CONFIDENTIAL, Banner, Sections
+from reviewapp.report import CAUTION, CONFIDENTIAL, Banner, Sections, printable
 
 NOT_INSTALLED = (
     "a PDF needs the extra package: install aerosol-treatment-review[pdf], or write"
@@ -39,8 +40,33 @@ def pdf(title: str, banner: Banner, sections: Sections) -> bytes:
         raise SourceUnreadable(NOT_INSTALLED)
     import typst
 
+    try:
+        return _compiled(title, banner, sections)
+    except typst.TypstError:
+        # A letter no font here has: a PDF for screen readers may not hold it.
+        plain = [(_in_fonts(head), _in_fonts(body)) for head, body in sections]
+    try:
+        return _compiled(_in_fonts(title), banner, plain)
+    except typst.TypstError as problem:
+        raise SourceUnreadable(
+            f"the PDF cannot be set: {problem}; write .html and print that page"
+        ) from None
+
+
+def _in_fonts(words: str) -> str:
+    """Letters outside the scripts every font has become a question mark."""
+    composed = unicodedata.normalize("NFC", words)
+    return "".join(c if ord(c) < 0x250 or c in _OURS else "?" for c in composed)
+
+
+_OURS = "–—‘’“”…·•µμ×−≥≤≈±°□■●◐○▸→σφκΔ\u202f\u2009"
+
+
+def _compiled(title: str, banner: Banner, sections: Sections) -> bytes:
+    import typst
+
     page = {
-        "title": title,
+        "title": printable(title),
         "confidential": CONFIDENTIAL,
         "caution": CAUTION,
         "footer": f"{title}. Findings need clinical confirmation. Engine "
@@ -48,7 +74,10 @@ def pdf(title: str, banner: Banner, sections: Sections) -> bytes:
         "stamp": list(banner.lines),
         "narrow": _NARROW,
         "sections": [
-            {"head": head, "blocks": [_set(each) for each in blocks_of(body)]}
+            {
+                "head": printable(head),
+                "blocks": [_set(each) for each in blocks_of(printable(body))],
+            }
             for head, body in sections
         ],
     }

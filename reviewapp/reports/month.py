@@ -190,17 +190,7 @@ def _decisions(month: Month) -> str:
     if month.decisions.empty:
         return paragraph("None recorded.")
     rows = [
-        tuple(
-            str(row[name])
-            for name in (
-                "indicator",
-                "what",
-                "strength",
-                "owner_role",
-                "measure",
-                "due",
-            )
-        )
+        tuple(str(row[name]) for name in _DECIDED)
         for row in month.decisions.to_dict("records")
     ]
     heads = ("About", "What", "Strength", "Owner (role)", "Measure", "Due")

@@ -6,7 +6,12 @@ from collections.abc import Callable
 from datetime import datetime
 from pathlib import Path
 
-from engine.errors import ScenarioInvalid, SharingRefused, UnknownId
+from engine.errors import (
+    OutputUnwritable,
+    ScenarioInvalid,
+    SharingRefused,
+    UnknownId,
+)
 from engine.journal import Journal, open_journal
 from engine.log import open_log
 from engine.policy import load_policy
@@ -60,11 +65,15 @@ def write_report(
     """
     ending = out.suffix.lower()
     check_ending(ending)
+    if not out.parent.is_dir() or out.is_dir():
+        raise OutputUnwritable(f"{out} cannot be written: not a file in a folder")
     if shared and kind not in _SHARED:
         raise SharingRefused(
             f"a report on {kind} names devices and days: there is no copy for sharing;"
             f" there is one of {', '.join(_SHARED)}"
         )
+    if journal is not None and not journal.exists():
+        raise UnknownId(f"there is no journal {journal}")
     beside = log_path.with_name(f"{log_path.name}.journal.jsonl")
     book = open_journal(journal or beside)
     with open_log(log_path) as log:
@@ -78,7 +87,13 @@ def write_report(
                 banner = shared_banner(banner)
         finally:
             done.close()
-    out.write_bytes(file_of(report, banner, ending))
+    made = file_of(report, banner, ending)
+    try:
+        building = out.with_name(f".{out.name}.building")
+        building.write_bytes(made)
+        building.replace(out)
+    except OSError as problem:
+        raise OutputUnwritable(f"{out} cannot be written: {problem}") from None
 
 
 def _as_facts(kind: str, scenario: Scenario | None) -> Scenario | None:
@@ -98,7 +113,7 @@ def _shared_month(done: Replay, book: Journal, **asked) -> Report:
 def _month_asked(
     done: Replay, book: Journal, month: str | None
 ) -> tuple[Month, dict[str, Units]]:
-    name = month or last_whole_month(done)
+    name = last_whole_month(done) if month is None else month
     return review_month(done, name, book), every_units(done, name)
 
 

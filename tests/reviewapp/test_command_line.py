@@ -134,3 +134,117 @@ def test_help_lists_every_command():
     )
     for command in ("open", "demo", "intake", "replay", "report", "verify"):
         assert f"    {command}" in done.stdout
+
+
+def test_a_place_that_cannot_be_written_is_one_line_and_exit_2(log, tmp_path, capsys):
+    taken = tmp_path / "taken"
+    taken.write_text("x")
+    asked = [
+        ["report", "month", str(log), "--out", str(tmp_path / "none" / "a.html")],
+        ["report", "month", str(log), "--out", str(tmp_path / "folder.html")],
+        ["replay", str(log), "--out", str(taken)],
+        ["replay", str(log), "--out", str(taken / "under")],
+        ["demo", str(tmp_path / "none" / "log.duckdb")],
+        ["demo", str(taken)],
+    ]
+    (tmp_path / "folder.html").mkdir()
+    for arguments in asked:
+        assert main(arguments) == 2, arguments
+        error = capsys.readouterr().err
+        assert error.count("\n") == 1
+        assert "a fault of ours" not in error
+    assert taken.read_text() == "x"
+
+
+def test_a_journal_that_is_not_there_is_not_an_empty_one(log, tmp_path, capsys):
+    out = str(tmp_path / "month.html")
+    missing = str(tmp_path / "none.jsonl")
+    code = main(["report", "month", str(log), "--out", out, "--journal", missing])
+    assert code == 2
+    assert "there is no journal" in capsys.readouterr().err
+
+
+def test_what_a_file_is_called_moves_no_cursor(tmp_path, capsys):
+    assert main(["replay", "a\nb\x1b[31m", "--out", str(tmp_path / "out")]) == 2
+    error = capsys.readouterr().err
+    assert error.count("\n") == 1
+    assert "\x1b" not in error
+
+
+@pytest.mark.parametrize(
+    "arguments",
+    [
+        ["demo", "x.duckdb", "--months", "abc"],
+        ["demo", "x.duckdb", "--seed", "-1"],
+        ["demo", "x.duckdb", "--treatments-per-month", "1"],
+        ["nothing"],
+    ],
+)
+def test_a_wrong_argument_is_one_line_and_exit_2(
+    arguments, capsys, monkeypatch, tmp_path
+):
+    monkeypatch.chdir(tmp_path)
+    try:
+        code = main(arguments)
+    except SystemExit as stopped:
+        code = stopped.code
+    assert code == 2
+    error = capsys.readouterr().err
+    assert error.count("\n") == 1
+    assert "_positive" not in error
+    assert list(tmp_path.iterdir()) == []
+
+
+def test_a_run_that_is_stopped_leaves_the_earlier_one(log, tmp_path, monkeypatch):
+    out = tmp_path / "out"
+    assert main(["replay", str(log), "--out", str(out)]) == 0
+    before = {each.name: each.read_bytes() for each in out.iterdir()}
+    assert set(before) >= {"run.json", "balance.parquet"}
+    import importlib
+
+    run = importlib.import_module("engine.replay.run")
+
+    def stop(*_):
+        raise KeyboardInterrupt
+
+    monkeypatch.setattr(run, "_stamp", stop)
+    assert main(["replay", str(log), "--out", str(out)]) == 2
+    assert {each.name: each.read_bytes() for each in out.iterdir()} == before
+
+
+def test_the_zone_of_a_map_holds_unless_another_is_asked_for(tmp_path):
+    from engine.log import open_log
+
+    source = tmp_path / "treatment.csv"
+    source.write_text("treatment_id,started_at\nT1,2026-07-01 10:00\n")
+    site = tmp_path / "map.toml"
+    site.write_text('site_zone = "America/New_York"\n')
+    into = tmp_path / "log.duckdb"
+    asked = ["intake", str(source), "--into", str(into), "--map", str(site)]
+    assert main(asked) == 0
+    with open_log(into) as opened:
+        assert opened.site_zone == "America/New_York"
+        at = opened.frame("SELECT started_at FROM treatment")["started_at"][0]
+    assert str(at) == "2026-07-01 14:00:00"
+
+
+def test_a_month_with_a_decision_is_printed(log, tmp_path):
+    from datetime import datetime
+
+    from engine.journal import open_journal
+
+    journal = open_journal(tmp_path / "journal.jsonl")
+    month = f"{START:%Y-%m}"
+    journal.append(
+        at=datetime(2026, 12, 1),
+        actor="QL",
+        role="quality lead",
+        action="decision",
+        object=f"month:{month}",
+        new={"text": "A filter in every bag", "strength": "stronger"},
+        reason="",
+    )
+    out = tmp_path / "month.html"
+    asked = ["report", "month", str(log), "--month", month, "--out", str(out)]
+    assert main([*asked, "--journal", str(journal.path)]) == 0
+    assert "A filter in every bag" in out.read_text()

@@ -209,3 +209,18 @@ def test_blocks_keep_the_order_and_the_cells():
 def test_tables_are_found_inside_columns():
     side = '<div style="display:flex"><div><table><tr><td>a</td></tr></table></div>'
     assert len(tables_of(f"{side}<div><p>b</p></div></div>")) == 1
+
+
+@pytest.mark.parametrize(
+    "letter", ["\0", "\x07", "\x1b", "\ufffe", "\x85", "नमस्ते", "e\u0301"]
+)
+def test_letters_no_paper_holds_do_not_stop_a_report(letter):
+    words = f"note {letter} end"
+    from reviewapp.reports.pieces import paragraph
+
+    report = Report(name="n", title="T", sections=[("S", paragraph(words))], tables={})
+    text = PdfReader(BytesIO(file_of(report, BANNER, ".pdf"))).pages[0].extract_text()
+    assert "note" in text
+    assert "end" in text
+    html = file_of(report, BANNER, ".html").decode("utf-8")
+    assert not re.search(r"[\x00-\x08\x0b-\x1f\x7f-\x9f]", html)

@@ -439,18 +439,53 @@ def test_no_file_but_a_log_is_overwritten(export, tmp_path):
         assert len(opened.frame("SELECT * FROM treatment")) == 1
 
 
-def test_a_quotation_mark_never_closed_loses_nothing_in_silence(export, taken):
+@pytest.mark.parametrize("last", ['"vcv,450', 'vcv,"450'])
+def test_a_quotation_mark_never_closed_loses_nothing_in_silence(export, taken, last):
+    path = export(
+        "treatment.csv",
+        HEAD,
+        "T1,2026-01-05T08:00Z,vcv,450",
+        f"T2,2026-01-05T08:00Z,{last}",
+        "T3,2026-01-05T08:00Z,vcv,450",
+    )
+    with pytest.raises(SourceUnreadable, match="a quotation mark is not closed, near"):
+        taken(path)
+
+
+def test_rows_taken_into_one_cell_by_a_quotation_mark_are_refused(export, taken):
     path = export(
         "treatment.csv",
         HEAD,
         "T1,2026-01-05T08:00Z,vcv,450",
         'T2,2026-01-05T08:00Z,"vcv,450',
-        "T3,2026-01-05T08:00Z,vcv,450",
+        'T3,2026-01-05T08:00Z,vcv",450',
+        "T4,2026-01-05T08:00Z,vcv,450",
     )
-    report, _, refused = taken(path)
+    report, log, refused = taken(path)
+    assert report.sources["rows_read"].iloc[0] == 3
+    assert "T3" in " ".join(refused["raw"])
+    assert sorted(log.frame("FROM treatment")["treatment_id"]) == ["T1", "T4"]
+
+
+def test_a_note_over_two_lines_is_one_cell(export, taken):
+    path = export(
+        "treatment.csv",
+        HEAD + ",note",
+        'T1,2026-01-05T08:00Z,vcv,450,"one, two',
+        'three"',
+        "T2,2026-01-05T08:00Z,vcv,450,",
+    )
+    report, log, refused = taken(path)
     assert report.sources["rows_read"].iloc[0] == 2
-    assert list(refused["row"]) == [3]
-    assert "T3" in refused["raw"].iloc[0]
+    assert refused.empty
+    assert sorted(log.frame("FROM treatment")["treatment_id"]) == ["T1", "T2"]
+
+
+def test_wider_text_is_named(tmp_path, taken):
+    path = tmp_path / "treatment.csv"
+    path.write_text("treatment_id,started_at\nT1,2026-01-05T08:00Z\n", "utf-16")
+    with pytest.raises(SourceUnreadable, match="save it as UTF-8"):
+        taken(path)
 
 
 def test_columns_the_log_does_not_have_are_listed_not_read(export, taken):

@@ -102,3 +102,75 @@ def test_a_file_that_is_not_toml_is_one_clear_line(tmp_path):
     path.write_text("name = ")
     with pytest.raises(ScenarioInvalid, match=r"^broken.toml cannot be read: "):
         load_scenario(path)
+
+
+def test_two_facts_on_one_column_keep_their_own_values(logged):
+    rows = treatments(
+        3,
+        generator=["jet", "vibrating_mesh", None],
+        circuit=["dual_limb", "dual_limb", "single_limb"],
+    )
+    moved = scenario(
+        fact=[
+            {
+                "column": "site",
+                "value": "airway_side",
+                "where": {"generator": ["vibrating_mesh", "jet"]},
+            },
+            {
+                "column": "site",
+                "value": "wye",
+                "where": {"circuit": ["single_limb"]},
+            },
+            {"column": "bias_flow_lpm", "value": 5.0},
+            {
+                "column": "bias_flow_lpm",
+                "value": 9.0,
+                "where": {"generator": ["unknown"]},
+            },
+            {"column": "peak_inspiratory_flow_lpm", "value": "unknown"},
+        ]
+    )
+    after = replay(logged(treatment=rows), POLICY, moved)
+    found = after.frame(
+        "SELECT generator::VARCHAR AS generator, site::VARCHAR AS site,"
+        " bias_flow_lpm, peak_inspiratory_flow_lpm AS peak FROM treatment"
+    )
+    by_generator = found.set_index(found["generator"].fillna("none"))
+    assert by_generator["site"].to_dict() == {
+        "jet": "airway_side",
+        "vibrating_mesh": "airway_side",
+        "none": "wye",
+    }
+    assert by_generator["bias_flow_lpm"].to_dict() == {
+        "jet": 5.0,
+        "vibrating_mesh": 5.0,
+        "none": 9.0,
+    }
+    assert by_generator["peak"].isna().all()
+
+
+@pytest.mark.parametrize(
+    ("fact", "message"),
+    [
+        ({"column": "actuations_count", "value": 1.5}, "must be a whole number from"),
+        (
+            {"column": "site", "value": "wye", "where": {"bias_flow_lpm": ["2"]}},
+            "must be a column of words or of yes and no",
+        ),
+        (
+            {"column": "site", "value": "wye", "where": {"spontaneous_breaths": ["x"]}},
+            "spontaneous_breaths must be one of yes, no; got x",
+        ),
+    ],
+)
+def test_a_fact_that_could_never_hold_is_refused(fact, message):
+    with pytest.raises(ScenarioInvalid, match=message):
+        scenario(fact=[fact])
+
+
+def test_a_file_nested_too_deep_is_one_clear_line(tmp_path):
+    path = tmp_path / "deep.toml"
+    path.write_text("a = " + "[" * 5000 + "]" * 5000)
+    with pytest.raises(ScenarioInvalid, match=r"^deep.toml cannot be read: "):
+        load_scenario(path)

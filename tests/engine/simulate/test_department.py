@@ -7,6 +7,7 @@ import pandas as pd
 import pytest
 
 from engine import load_policy, open_log, replay
+from engine.errors import NothingToReview, OutputUnwritable
 from engine.simulate import invent, write_department
 
 SEED_SLACK = 0.06  # shares are of clustered treatments; stated, not tuned to a seed
@@ -48,10 +49,25 @@ def test_another_seed_gives_another_department():
     )
 
 
-@pytest.mark.parametrize(("months", "monthly"), [(0, 800), (6, 0)])
-def test_too_small_a_department_is_refused(months, monthly):
-    with pytest.raises(ValueError, match="needs at least 1 month and 10 treatments"):
-        invent(months, monthly)
+@pytest.mark.parametrize(
+    ("months", "monthly", "seed"), [(0, 800, 1), (6, 0, 1), (6, 800, -1)]
+)
+def test_too_small_a_department_is_refused(months, monthly, seed):
+    with pytest.raises(NothingToReview, match="needs at least 1 month, 10 treatments"):
+        invent(months, monthly, seed)
+
+
+def test_only_an_invented_department_is_written_over(tmp_path):
+    path = tmp_path / "afile"
+    path.write_text("precious")
+    with pytest.raises(OutputUnwritable, match="is there already; give another name"):
+        write_department(path, 1, 10)
+    assert path.read_text() == "precious"
+    other = tmp_path / "other.duckdb"
+    write_department(other, 1, 10)
+    write_department(other, 1, 10)
+    with pytest.raises(OutputUnwritable, match="is not a folder"):
+        write_department(tmp_path / "none" / "log.duckdb", 1, 10)
 
 
 def test_every_month_holds_600_to_1000_treatments_in_three_units(found):
