@@ -18,6 +18,17 @@ _ADDED = {
     "doubt": "Why not used",
     "captured_ml": "Caught, mL",
     "treatments": "Treatments",
+    "treatments_count": "Treatments",
+    "present_count": "Filter present",
+    "absent_count": "No filter",
+    "unknown_count": "Filter unknown",
+    "not_estimated_count": "Without an estimate",
+    "patients_count": "Patients",
+    "sensor_ml": "To the sensor, mL",
+    "sensor_low_ml": "Low, mL",
+    "sensor_high_ml": "High, mL",
+    "slope_per_h": "Slope, cmH2O/(L/s) per h",
+    "time_to_limit_h": "To the limit, h",
     "patients": "Patients",
     "text": "What",
     "strength": "Strength",
@@ -34,8 +45,14 @@ _ADDED = {
 def labelled(table: pd.DataFrame) -> pd.DataFrame:
     """The same table with its columns called what the dictionary calls them."""
     return table.rename(
-        columns={name: _ADDED.get(name) or label_of(name) for name in table.columns}
+        columns={name: _ADDED.get(name) or _label(str(name)) for name in table.columns}
     )
+
+
+def _label(name: str) -> str:
+    """The dictionary's label, else the name in plain words."""
+    label = label_of(name)
+    return label if label != name else f"{name[:1].upper()}{name[1:]}".replace("_", " ")
 
 
 def csv_of(table: pd.DataFrame) -> bytes:

@@ -32,6 +32,7 @@ from engine.reviews.incident_words import (
     not_supported,
     sentence_of,
 )
+from engine.reviews.signatures import sign_offs, stamps_of
 from engine.reviews.timeline import Clock, clock_of, timeline_of
 from engine.stats.drift import Drift, drift_of
 from engine.stats.filter_life import life_of
@@ -105,6 +106,8 @@ class Incident:
     actions: pd.DataFrame
     harm: pd.DataFrame
     harm_sentence: str
+    snapshot: dict[str, Any]
+    sign_offs: pd.DataFrame
     cautions: tuple[str, ...]
 
 
@@ -219,8 +222,32 @@ def review_fault(
         actions=_actions(facts, journal),
         harm=harm,
         harm_sentence=harm_sentence,
+        snapshot=_snapshot(replay, facts, journal, burden, explanations),
+        sign_offs=sign_offs(journal, f"incident:{facts['incident_id']}"),
         cautions=CAUTIONS,
     )
+
+
+def _snapshot(
+    replay: Replay,
+    facts: dict[str, Any],
+    journal: Journal | None,
+    burden: Burden,
+    explanations: tuple[Explanation, ...],
+) -> dict[str, Any]:
+    """Everything a signature is put under, small enough for the journal."""
+    return {
+        "incident": facts["incident_id"],
+        **stamps_of(replay, journal),
+        "figures": {
+            "Aerosol to the sensor, mL": {
+                "value": round(float(burden.sensor_ml), 6),
+                "known": burden.treatments_count - burden.not_estimated_count,
+                "unknown": burden.not_estimated_count,
+            }
+        },
+        "grades": {each.title: each.grade for each in explanations},
+    }
 
 
 def _look_back(

@@ -19,10 +19,10 @@ from engine.reviews.month_journal import (
     Confirmations,
     confirmations,
     decisions,
-    sign_offs,
 )
 from engine.reviews.month_lines import Line
 from engine.reviews.month_series import all_lines
+from engine.reviews.signatures import sign_offs, stamps_of
 from engine.rules import rule_of
 
 CAUTIONS = (
@@ -162,7 +162,7 @@ def review_month(
         ),
         confirmations=checked,
         decisions=decisions(journal, month),
-        sign_offs=sign_offs(journal, month),
+        sign_offs=sign_offs(journal, f"month:{month}"),
         snapshot=_snapshot(replay, journal, month, unit, lines),
         cautions=CAUTIONS,
     )
@@ -247,15 +247,10 @@ def _snapshot(
     lines: tuple[Line, ...],
 ) -> dict[str, Any]:
     """Everything a signature is put under, small enough for the journal."""
-    stamp = replay.stamp
     return {
         "month": month,
         "unit": unit,
-        "engine_version": stamp["engine_version"],
-        "log_fingerprint": stamp["log_fingerprint"],
-        "policy_name": stamp["policy_name"],
-        "policy_hash": stamp["policy_hash"],
-        "journal_head": journal.head if journal is not None else None,
+        **stamps_of(replay, journal),
         "figures": {
             each.indicator.id: {
                 "value": None if each.value is None else round(each.value, 6),

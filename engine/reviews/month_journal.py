@@ -8,7 +8,6 @@ from __future__ import annotations
 
 import re
 from dataclasses import dataclass
-from typing import Any
 
 import pandas as pd
 
@@ -146,16 +145,6 @@ def decisions(journal: Journal | None, month: str | None = None) -> pd.DataFrame
 _DECISION_KEYS = ("text", "strength", "owner_role", "measure", "due")
 
 
-def sign_offs(journal: Journal | None, month: str) -> pd.DataFrame:
-    """Signatures of the month: seq, at, actor, role, head and the frozen snapshot."""
-    found = [
-        (e.seq, e.at_utc, e.actor, e.role, e.new)
-        for e in _standing(journal, "sign_off")
-        if e.object == f"month:{month}" and isinstance(e.new, dict)
-    ]
-    return pd.DataFrame(found, columns=["seq", "at", "actor", "role", "snapshot"])
-
-
 def baselines(journal: Journal | None) -> dict[str, tuple[str, str]]:
     """First and last month of each indicator's frozen baseline; the latest stands."""
     agreed = {}
@@ -165,34 +154,6 @@ def baselines(journal: Journal | None) -> dict[str, tuple[str, str]]:
             if isinstance(since, str) and isinstance(until, str):
                 agreed[entry.object.removeprefix("baseline:")] = (since, until)
     return agreed
-
-
-def differences(signed: dict[str, Any], now: dict[str, Any]) -> list[str]:
-    """What no longer agrees with a signed snapshot, a line each."""
-    told = []
-    for key, words in _STAMPS.items():
-        if signed.get(key) != now.get(key):
-            told.append(f"{words} then {signed.get(key)}, now {now.get(key)}.")
-    for name, before in (signed.get("figures") or {}).items():
-        after = (now.get("figures") or {}).get(name)
-        if after is None:
-            told.append(f"{name} is no longer counted.")
-        elif after != before:
-            told.append(f"{name}: then {_figure(before)}, now {_figure(after)}.")
-    return told
-
-
-_STAMPS = {
-    "log_fingerprint": "Log",
-    "policy_hash": "Policy",
-    "engine_version": "Engine",
-}
-
-
-def _figure(held: dict[str, Any]) -> str:
-    value = held.get("value")
-    shown = "no figure" if value is None else f"{value:.4g}"
-    return f"{shown} from {held.get('known')} known, {held.get('unknown')} unknown"
 
 
 def _judged(replay: Replay, journal: Journal | None) -> pd.DataFrame:

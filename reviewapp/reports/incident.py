@@ -11,6 +11,7 @@ from engine.reviews.explanations import Explanation
 from engine.reviews.incident import Incident
 from engine.reviews.incident_scenario import OtherHistory
 from engine.reviews.incident_words import local, millilitres
+from engine.reviews.signatures import signed_lines
 from reviewapp.drawings.incident import burden_svg, timeline_svg
 from reviewapp.drawings.svg import LIGHT
 from reviewapp.report import Report
@@ -52,6 +53,7 @@ def incident_sections(
         ("The same exposure elsewhere", _elsewhere(incident)),
         ("What the records do not support", bullets(incident.not_supported)),
         ("Harm and actions", _actions(incident)),
+        ("Signature", _signature(incident)),
         ("Rows cited", _cited(incident)),
     ]
 
@@ -204,6 +206,12 @@ def _actions(incident: Incident) -> str:
     )
     parts.append(table(("Strength", "Action", "Measured by", "Because of"), offered))
     return "".join(parts)
+
+
+def _signature(incident: Incident) -> str:
+    if incident.sign_offs.empty:
+        return paragraph("Not signed. Grades may change until it is.")
+    return bullets(signed_lines(incident.sign_offs, incident.snapshot))
 
 
 def _cited(incident: Incident) -> str:

@@ -10,7 +10,7 @@ import pandas as pd
 
 from engine.reviews.figures import month_words, percent, significant
 from engine.reviews.month import Month
-from engine.reviews.month_journal import differences
+from engine.reviews.signatures import signed_lines
 from engine.rules.wording import word
 from reviewapp.drawings.month_lines import Marks, UnitsOf, lines_html, style
 from reviewapp.drawings.svg import LIGHT
@@ -203,14 +203,7 @@ _DECIDED = ("indicator", "text", "strength", "owner_role", "measure", "due")
 def _signature(month: Month) -> str:
     if month.sign_offs.empty:
         return paragraph("Not signed. Figures may change until it is.")
-    lines = []
-    for row in month.sign_offs.to_dict("records"):
-        changed = differences(row["snapshot"], month.snapshot)
-        head = str(row["snapshot"].get("journal_head") or "")[:12]
-        same = "Nothing has changed since." if not changed else " ".join(changed[:8])
-        signed = f"{row['actor']} ({row['role']}), {row['at']:%d %B %Y %H:%M} UTC"
-        lines.append(f"{signed}, on journal head {head}. {same}")
-    return bullets(lines)
+    return bullets(signed_lines(month.sign_offs, month.snapshot))
 
 
 def _counting(month: Month) -> str:

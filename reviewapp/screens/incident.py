@@ -14,6 +14,7 @@ from engine.errors import EngineError
 from engine.reviews.explanations import Explanation
 from engine.reviews.incident import Incident
 from engine.reviews.incident_words import local
+from engine.reviews.signatures import signed_lines
 from reviewapp import data, entry, parts, tables, theme
 from reviewapp.drawings.incident import burden_svg, timeline_svg
 from reviewapp.reports.incident import GRADE_MARKS, ROLES, incident_report
@@ -271,14 +272,25 @@ def _sign_off(incident: Incident) -> None:
     )
     if incident.facts["incident_id"] is None:
         return
+    for line in signed_lines(incident.sign_offs, incident.snapshot):
+        st.markdown(parts.plain(line))
+    if incident.sign_offs.empty:
+        st.markdown("Not signed. Grades may change until it is.")
     with entry.form("sign"):
+        st.caption(
+            "A signature freezes the grades with the hashes of log, policy and journal."
+        )
         signed = entry.signature()
         agreed = st.checkbox("I have read the rows cited and the report.")
         if st.form_submit_button("Sign"):
             if agreed:
-                new = {"report": "incident"}
-                about = _about(incident)
-                entry.keep("sign", signed, action="sign_off", object=about, new=new)
+                entry.keep(
+                    "sign",
+                    signed,
+                    action="sign_off",
+                    object=_about(incident),
+                    new=incident.snapshot,
+                )
             else:
                 st.warning("Tick that you have read it, then sign.")
 

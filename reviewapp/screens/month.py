@@ -9,7 +9,7 @@ from engine.reviews.chart_check import CHART, draw_sample
 from engine.reviews.figures import month_words
 from engine.reviews.indicators import INDICATORS
 from engine.reviews.month import Month
-from engine.reviews.month_journal import differences
+from engine.reviews.signatures import signed_lines
 from reviewapp import data, entry, parts, tables, theme
 from reviewapp.drawings.month_lines import lines_html, style
 from reviewapp.parts import address
@@ -280,11 +280,8 @@ def _freeze_baseline(month: Month) -> None:
 
 def _sign_off(month: Month) -> None:
     st.subheader("Signature")
-    for row in month.sign_offs.to_dict("records"):
-        changed = differences(row["snapshot"], month.snapshot)
-        same = "Nothing has changed since." if not changed else " ".join(changed)
-        when = f"{row['at']:%d %B %Y %H:%M} UTC"
-        st.markdown(parts.plain(f"{row['actor']} ({row['role']}), {when}. {same}"))
+    for line in signed_lines(month.sign_offs, month.snapshot):
+        st.markdown(parts.plain(line))
     if month.sign_offs.empty:
         st.markdown("Not signed. Figures may change until it is.")
     if month.unit is not None:

@@ -227,3 +227,22 @@ def test_a_decision_says_how_strong_it_is_before_it_is_kept():
     kept = next(d.value for d in at.dataframe if "Owner (role)" in d.value.columns)
     assert kept["What"].tolist() == ["Put a filter in every nebulizer bag"]
     assert kept["Strength"].tolist() == ["stronger"]
+
+
+@pytest.mark.parametrize(
+    ("screen", "log"),
+    [("incident", "case-sensor_fouled"), ("month", "case-a_month_of_nights")],
+)
+def test_a_signature_freezes_what_was_read(screen, log):
+    at = opened(screen, log=log)
+    assert "Not signed." in words_of(at)
+    submitted(at, "sign_0").run()
+    assert [w.value for w in at.warning] == ["Tick that you have read it, then sign."]
+    signer(at, "sign_0").set_value("QL")
+    next(c for c in at.checkbox if c.form_id == "sign_0").check()
+    submitted(at, "sign_0").run()
+    assert not at.exception
+    words = words_of(at).replace("\\", "")
+    assert "QL (quality lead)" in words
+    assert "Nothing has changed since." in words
+    assert "Not signed." not in words

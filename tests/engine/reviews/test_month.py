@@ -16,8 +16,8 @@ from engine.errors import NothingToReview, UnknownId
 from engine.journal import open_journal
 from engine.reviews.indicators import INDICATORS
 from engine.reviews.month import last_whole_month, review_month
-from engine.reviews.month_journal import differences
 from engine.reviews.month_units import units_of
+from engine.reviews.signatures import differences
 from engine.rules import ALL_RULES
 
 _spec = importlib.util.spec_from_file_location(
