@@ -208,6 +208,9 @@ def compared(
 
 
 def _outcomes(doses: pd.Series) -> tuple[Outcome, ...]:
+    """Each share before and after; none where no treatment could be compared."""
+    if not doses["compared"]:
+        return ()
     return (
         _outcome(doses, "delivered", "Share of the dose past the tube", "up"),
         _outcome(doses, "room", "Share to the room", "down"),
@@ -453,8 +456,16 @@ _GOES = {
 }
 
 
+CANNOT_TELL = (
+    "What it would do to the dose cannot be told: no treatment has an estimate before"
+    " and after."
+)
+
+
 def _moves(outcomes: tuple[Outcome, ...]) -> str:
     """Where the dose would go instead; sensors are named only if the room is not."""
+    if not outcomes:
+        return CANNOT_TELL
     moved = [
         each
         for each in outcomes

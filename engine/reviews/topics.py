@@ -241,7 +241,9 @@ def _choose(
             "title": [topic.title for topic in TOPICS],
             "covers": choice.alone,
             "covers_frac": np.array(choice.alone) / (choice.total or math.nan),
-            "chosen": [i in choice.chosen for i in range(len(TOPICS))],
+            "chosen": [
+                i in choice.chosen and choice.alone[i] > 0 for i in range(len(TOPICS))
+            ],
         }
     ).sort_values("covers", ascending=False, ignore_index=True)
     return choice, ranking, int((factor < 1).sum())
@@ -483,6 +485,10 @@ def _runner_up(choice: Choice) -> str:
     """The next best set and what would be lost; a near tie is the educator's call."""
     if not choice.runner_up or choice.value == 0:
         return "There is no other set to choose."
+    if any(choice.alone[i] == 0 for i in choice.chosen):
+        return (
+            "Everything that was flagged is covered: there is no other set to choose."
+        )
     out = [TOPICS[i].title for i in choice.chosen if i not in choice.runner_up]
     into = [TOPICS[i].title for i in choice.runner_up if i not in choice.chosen]
     loss = choice.loss_frac

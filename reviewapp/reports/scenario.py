@@ -5,7 +5,7 @@ from __future__ import annotations
 from html import escape
 
 from engine.reviews.figures import percent
-from engine.reviews.scenario import Comparison
+from engine.reviews.scenario import CANNOT_TELL, Comparison
 from engine.rules.wording import word
 from reviewapp.drawings.scenario import filters_svg, outcome_svg
 from reviewapp.drawings.svg import LIGHT
@@ -58,7 +58,7 @@ def _outcomes(comparison: Comparison) -> str:
         f"{paragraph(each.says)}"
         for each in comparison.outcomes
     )
-    return drawn + classes_table(comparison)
+    return (drawn or paragraph(CANNOT_TELL)) + classes_table(comparison)
 
 
 def classes_table(comparison: Comparison) -> str:

@@ -10,7 +10,12 @@ from engine.columns import TREATMENT
 from engine.errors import EngineError
 from engine.replay import Scenario, scenario_from
 from engine.reviews.figures import month_words
-from engine.reviews.scenario import Comparison, ready_scenarios, scenario_record
+from engine.reviews.scenario import (
+    CANNOT_TELL,
+    Comparison,
+    ready_scenarios,
+    scenario_record,
+)
 from engine.rules.wording import label_of, word
 from reviewapp import data, entry, parts, theme
 from reviewapp.drawings.scenario import filters_svg, outcome_svg
@@ -174,6 +179,8 @@ def _change(comparison: Comparison) -> None:
 def _outcomes(comparison: Comparison) -> None:
     st.subheader("Before and after")
     colours = theme.colours()
+    if not comparison.outcomes:
+        parts.empty(CANNOT_TELL, "Choose a longer period, or look under Log for gaps.")
     for each in comparison.outcomes:
         st.markdown(f"**{each.title}**")
         st.markdown(

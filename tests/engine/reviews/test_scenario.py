@@ -136,3 +136,24 @@ def test_filters_are_counted_by_hand(starts, allowed, needed):
 def test_filters_are_counted_alike_over_a_long_wait():
     starts = pd.Series(range(1000), dtype=float)
     assert filters_needed(starts, [500.0] * 1000) == 2
+
+
+def test_nothing_to_compare_is_said_and_no_figure_given(replayed):
+    done = replayed(
+        treatment=[
+            {
+                "treatment_id": "only",
+                "status": "given",
+                "started_at": "2026-07-01 08:00",
+                "generator": "jet",
+                "site": "wye",
+                "circuit": "dual_limb",
+            }
+        ]
+    )
+    fitted = find_scenario("filter_on_every_treatment")
+    found = compare_scenarios(done.log, done.policy, fitted, (None, None), before=done)
+    assert found.compared == 0
+    assert found.outcomes == ()
+    assert "cannot be told" in found.sentence
+    assert "0 %" not in found.sentence
