@@ -81,6 +81,8 @@ def changed(lines: tuple[Line, ...]) -> str:
         for each in lines
         if each.change_shown
     ]
+    if all(each.change is None for each in lines):
+        return "Nothing can be compared with the month before."
     if not told:
         return "No difference from the month before goes beyond its interval."
     return " ".join(told[:5])
