@@ -23,6 +23,10 @@ def colours() -> Colours:
     return DARK if is_dark() else LIGHT
 
 
+# A dark page would spend a cartridge: on paper its light and dark change places.
+_LIGHT_PRINT = "html { filter: invert(1) hue-rotate(180deg); background: #000; }"
+
+
 def css() -> str:
     """Style shared by every screen: a readable measure, quiet tables, print."""
     shown = colours()
@@ -45,6 +49,7 @@ h1, h2, h3 {{ letter-spacing: -0.01em; }}
   outline: 2px solid {shown["aerosol"]}; outline-offset: 2px; }}
 .answers td {{ padding: 0.15rem 0.6rem 0.15rem 0; vertical-align: top; }}
 @media print {{
+  {_LIGHT_PRINT if is_dark() else ""}
   [data-testid="stSidebar"], [data-testid="stHeader"], [data-testid="stToolbar"],
   .stButton, .stDownloadButton {{ display: none !important; }}
   .block-container {{ max-width: none; padding: 0; }}

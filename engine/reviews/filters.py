@@ -384,7 +384,7 @@ def _sentence(lives: pd.DataFrame, limit: float) -> str:
         if state in states
     ]
     opening = (
-        f"{counted(len(lives), 'filter')} in the log, {len(used)} still in use at its"
+        f"{counted(len(lives), 'filter')} in the log, {len(used):,} still in use at its"
         f" end."
     )
     if used.empty:
@@ -413,8 +413,8 @@ def _pointing(lives: pd.DataFrame) -> str:
     unsure = len(rising) - aerosol - water
     return (
         f" Of {counted(len(rising), 'filter')} that rose, the rise goes along with"
-        f" captured aerosol in {aerosol}, with humid hours in {water}; in {unsure} the"
-        f" record cannot tell."
+        f" captured aerosol in {aerosol:,}, with humid hours in {water:,}; in"
+        f" {unsure:,} the record cannot tell."
     )
 
 

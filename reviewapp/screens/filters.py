@@ -192,7 +192,7 @@ def _aerosol_or_water(review: Filters) -> None:
         )
         return
     st.markdown(
-        f"Pooled over {loading.filters_count} filters and {loading.readings_count:,}"
+        f"Pooled over {loading.filters_count:,} filters and {loading.readings_count:,}"
         " readings: resistance goes up by"
         f" **{loading.rate_per_dose:.2f}** ({loading.rate_per_dose_low:.2f} to"
         f" {loading.rate_per_dose_high:.2f}) cmH2O/(L/s) per mL caught, and by"
