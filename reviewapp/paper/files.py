@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from engine.errors import SourceUnreadable
-from reviewapp.paper.pdf import pdf
+from reviewapp.paper.pdf import NOT_INSTALLED, is_installed, pdf
 from reviewapp.paper.workbook import workbook
 from reviewapp.report import Banner, Report, page
 
@@ -33,7 +33,9 @@ def file_of(report: Report, banner: Banner, ending: str) -> bytes:
 
 
 def check_ending(ending: str) -> None:
-    """Raises SourceUnreadable for an ending no report has."""
+    """Raises SourceUnreadable for an ending that cannot be written here."""
     if ending not in ENDINGS:
         known = ", ".join(ENDINGS)
         raise SourceUnreadable(f"a report ends in {known}; got {ending or 'no ending'}")
+    if ending == ".pdf" and not is_installed():
+        raise SourceUnreadable(NOT_INSTALLED)

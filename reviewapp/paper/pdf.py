@@ -34,10 +34,9 @@ def is_installed() -> bool:
 def pdf(title: str, banner: Banner, sections: Sections) -> bytes:
     """The whole document.
 
-    Raises   SourceUnreadable if the extra package is not installed.
+    Raises   SourceUnreadable if its words cannot be set; ImportError where the extra
+             package is not installed (ask ``is_installed`` first).
     """
-    if not is_installed():
-        raise SourceUnreadable(NOT_INSTALLED)
     import typst
 
     try:
