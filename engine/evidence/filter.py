@@ -120,6 +120,13 @@ FIRST_LOOK_P_FRAC = Number(
     known="ours",
     note="a change with p .05 exceeds it in fewer than one of a million first looks",
 )
+SECOND_LOOK_P_FRAC = Number(
+    value=0.1,
+    unit="frac",
+    source=OURS,
+    where="p above which a sample settles it and not all arrangements are tried",
+    known="ours",
+)
 BREAK_SEGMENT_FRAC = Number(
     value=0.15,
     unit="frac",

@@ -10,6 +10,7 @@ clog speed up, and a bend taken for a straight line reads as a step. ``pettitt``
 from __future__ import annotations
 
 import math
+from collections.abc import Iterator
 from dataclasses import dataclass
 from functools import lru_cache
 from itertools import permutations
@@ -26,6 +27,7 @@ from engine.evidence.filter import (
     FIRST_LOOK_P_FRAC,
     INTERVAL_COVER_FRAC,
     RESIDUAL_ARRANGEMENTS_COUNT,
+    SECOND_LOOK_P_FRAC,
     SEGMENT_READINGS_COUNT,
 )
 
@@ -120,11 +122,10 @@ def line_and_step(
         beaten = int((chance.max(axis=1) >= observed * (1 - _ROUNDING)).sum())
         return beaten / len(order) if exact else (beaten + 1) / (len(order) + 1)
 
-    order, exact = _drawn(n, seed, int(FIRST_LOOK_ARRANGEMENTS_COUNT)), False
-    p = share_as_good(order, exact)
-    if p <= float(FIRST_LOOK_P_FRAC):
-        order, exact = _orders(n, seed, arrangements)
+    for order, exact, settled_above in _looks(n, seed, arrangements):
         p = share_as_good(order, exact)
+        if p > settled_above:
+            break
     slope, drop = _with_step(x, y, at)
     return Step(
         readings_count=n,
@@ -256,6 +257,18 @@ def _allowed(
         return np.zeros((len(readings), 1))
     falls = readings[:, places] < readings[:, places - 1]
     return np.where(falls & (drops < 0), shares, 0.0)
+
+
+def _looks(
+    n: int, seed: int, arrangements: int | None
+) -> Iterator[tuple[np.ndarray, bool, float]]:
+    """Ever more arrangements, and the p above which each look is enough."""
+    few, many = int(FIRST_LOOK_ARRANGEMENTS_COUNT), int(RESIDUAL_ARRANGEMENTS_COUNT)
+    yield _drawn(n, seed, few), False, float(FIRST_LOOK_P_FRAC)
+    order, exact = _orders(n, seed, arrangements)
+    if exact and len(order) > many:
+        yield _drawn(n, seed, many), False, float(SECOND_LOOK_P_FRAC)
+    yield order, exact, 0.0
 
 
 @lru_cache(maxsize=64)
