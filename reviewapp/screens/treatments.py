@@ -186,12 +186,19 @@ def _list(listed: pd.DataFrame, total: int) -> str:
             "Site": [shown("site", v) for v in listed["site"]],
         }
     )
-    event = st.dataframe(
+    ids = [str(name) for name in listed["treatment_id"]]
+
+    def pick() -> None:
+        rows = st.session_state["worklist"]["selection"]["rows"]
+        if rows and rows[0] < len(ids):
+            _show(ids[rows[0]])
+
+    st.dataframe(
         table,
         hide_index=True,
         width="stretch",
         height=250,
-        on_select="rerun",
+        on_select=pick,
         selection_mode="single-row",
         key="worklist",
     )
@@ -206,14 +213,46 @@ def _list(listed: pd.DataFrame, total: int) -> str:
     )
     if total > len(listed):
         right.caption(f"The first {len(listed)} of {total:,} are listed.")
-    picked = event["selection"]["rows"] if event else []
-    if picked and picked[0] < len(listed):
-        return str(listed["treatment_id"].iloc[picked[0]])
-    return st.query_params.get("treatment") or str(listed["treatment_id"].iloc[0])
+    shown_id = st.query_params.get("treatment") or ids[0]
+    _steps(ids, shown_id)
+    return shown_id
+
+
+def _steps(ids: list[str], shown_id: str) -> None:
+    """One treatment on or back in the list, without going up to it."""
+    at = ids.index(shown_id) if shown_id in ids else -1
+    back, on, place = st.columns([1, 1, 4], vertical_alignment="center")
+    back.button(
+        "Previous",
+        key="previous_treatment",
+        disabled=at <= 0,
+        on_click=_show,
+        args=(ids[max(at - 1, 0)],),
+        width="stretch",
+    )
+    on.button(
+        "Next",
+        key="next_treatment",
+        disabled=at >= len(ids) - 1,
+        on_click=_show,
+        args=(ids[min(at + 1, len(ids) - 1)],),
+        width="stretch",
+    )
+    place.caption(
+        f"{at + 1} of {len(ids)} listed" if at >= 0 else "not among those listed"
+    )
+
+
+def _show(treatment_id: str) -> None:
+    st.query_params["treatment"] = treatment_id
 
 
 def _find() -> None:
-    st.query_params["treatment"] = st.session_state["find_treatment"].strip()
+    wanted = st.session_state["find_treatment"].strip()
+    if wanted:
+        _show(wanted)
+    else:
+        st.query_params.pop("treatment", None)
 
 
 # --- one treatment ------------------------------------------------------------

@@ -246,3 +246,26 @@ def test_a_signature_freezes_what_was_read(screen, log):
     assert "QL (quality lead)" in words
     assert "Nothing has changed since." in words
     assert "Not signed." not in words
+
+
+def test_the_list_is_walked_and_an_id_is_found_whatever_was_chosen_before():
+    at = opened("treatments", log="case-a_month_of_nights")
+
+    def heading():
+        return next(
+            m.value for m in at.markdown if m.value.startswith("#### Treatment")
+        )
+
+    first = heading()
+    assert at.button(key="previous_treatment").disabled
+    at.button(key="next_treatment").click().run()
+    second = heading()
+    assert second != first
+    at.button(key="previous_treatment").click().run()
+    assert heading() == first
+    wanted = second.removeprefix("#### Treatment ").replace("\\", "")
+    at.text_input(key="find_treatment").set_value(wanted).run()
+    assert heading() == second
+    at.text_input(key="find_treatment").set_value("nobody").run()
+    assert not at.exception
+    assert "has no treatment nobody" in words_of(at)
