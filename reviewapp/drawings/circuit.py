@@ -345,7 +345,7 @@ def _hme(one: Drawing, colours: Colours) -> Iterator[str]:
     name = "filter-HME" if one.humidification == "hmef" else "HME"
     x, top = 934.0, AIRWAY_Y - AIRWAY / 2 - 6
     tall = AIRWAY + 12
-    below = top + tall + 18
+    below, paper = top + tall + 18, colours["paper"]
     if one.hme_state == "in_line":
         body = rectangle(x, top, 16, tall, colours["ink"])
         for i in range(6):
@@ -354,14 +354,14 @@ def _hme(one: Drawing, colours: Colours) -> Iterator[str]:
         yield _part(f"{name} in line: {one.said('hme')} caught", body)
         caught = f" holds {_percent(one.frac('hme'))} %" if one.fractions else ""
         words = f"{name} in line{caught}"
-        yield text(x + 8, below, words, colours["ink"], 13, "middle", 600)
+        yield text(x + 8, below, words, colours["ink"], 13, "middle", 600, paper)
     elif one.hme_state is None:
         yield _part(
             f"{name}: in line or not is not logged",
             rectangle(x, top, 16, tall, "url(#unsaid)", colours["unknown"]),
         )
         words = f"{name}: in line or not is not logged"
-        yield text(x + 8, below, words, colours["unknown"], 13, "middle", 600)
+        yield text(x + 8, below, words, colours["unknown"], 13, "middle", 600, paper)
     else:
         words = f"{name} {one.hme_state}"
         yield text(x + 8, below, words, colours["faint"], 12, "middle")
@@ -455,10 +455,9 @@ def _figures(one: Drawing, colours: Colours) -> Iterator[str]:
     if one.fractions is None:
         return
     ink, faint = colours["ink"], colours["faint"]
-    yield text(1030, AIRWAY_Y - AIRWAY / 2 - 34, "past the tube", faint, 12, "end")
-    yield text(
-        1030, AIRWAY_Y - AIRWAY / 2 - 16, one.said("delivered"), ink, 15, "end", 700
-    )
+    above = AIRWAY_Y - 96  # clear of the lung and of a generator at the airway
+    yield text(1104, above, "past the tube", faint, 12, "end")
+    yield text(1104, above + 18, one.said("delivered"), ink, 15, "end", 700)
     lung = _percent(one.frac("tracheobronchial", "alveolar"))
     yield text(1076, AIRWAY_Y - 2, "lung", faint, 12, "middle")
     yield text(1076, AIRWAY_Y + 16, f"{lung} %", ink, 15, "middle", 700)
@@ -477,7 +476,8 @@ def _figures(one: Drawing, colours: Colours) -> Iterator[str]:
         f"swept past the Y {_percent(max(back - exhaled, 0))} %   ·   "
         f"exhaled {_percent(exhaled)} %"
     )
-    yield text(520, EXPIRATORY_Y + 5, words, ink, 14, "middle", 600)
+    paper = colours["panel"]
+    yield text(520, EXPIRATORY_Y + 5, words, ink, 14, "middle", 600, paper)
     lost = one.frac("generator_residual")
     yield text(
         460,

@@ -51,11 +51,19 @@ def text(
     size: float = 12,
     anchor: str = "start",
     weight: int = 400,
+    halo: str = "",
 ) -> str:
-    """Words at a place; ``anchor`` start, middle or end."""
+    """Words at a place; ``anchor`` start, middle or end, ``halo`` the colour around
+    them where they lie on something drawn."""
+    around = (
+        f' paint-order="stroke" stroke="{halo}" stroke-width="4"'
+        ' stroke-linejoin="round"'
+        if halo
+        else ""
+    )
     return (
         f'<text x="{x:.1f}" y="{y:.1f}" fill="{fill}" font-size="{size:g}"'
-        f' text-anchor="{anchor}" font-weight="{weight}"'
+        f' text-anchor="{anchor}" font-weight="{weight}"{around}'
         f' style="font-variant-numeric:tabular-nums">{escape(str(words))}</text>'
     )
 
