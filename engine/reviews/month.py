@@ -19,6 +19,7 @@ from engine.reviews.month_journal import (
     Confirmations,
     confirmations,
     decisions,
+    open_decisions,
 )
 from engine.reviews.month_lines import Line
 from engine.reviews.month_series import all_lines
@@ -70,6 +71,7 @@ class Month:
     forgone: pd.DataFrame
     confirmations: Confirmations
     decisions: pd.DataFrame
+    open_decisions: pd.DataFrame
     sign_offs: pd.DataFrame
     snapshot: dict[str, Any]
     cautions: tuple[str, ...]
@@ -162,6 +164,7 @@ def review_month(
         ),
         confirmations=checked,
         decisions=decisions(journal, month),
+        open_decisions=open_decisions(journal, month),
         sign_offs=sign_offs(journal, f"month:{month}"),
         snapshot=_snapshot(replay, journal, month, unit, lines),
         cautions=CAUTIONS,

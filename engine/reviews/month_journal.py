@@ -15,7 +15,7 @@ from engine.evidence.review import CONFIRMED_START_FRAC
 from engine.journal import Entry, Journal
 from engine.replay import Replay
 from engine.reviews import month_rows as rows
-from engine.reviews.figures import percent, percent_range
+from engine.reviews.figures import month_after, percent, percent_range
 from engine.reviews.incident_words import STRENGTHS
 from engine.reviews.wording import counted
 from engine.rules import RETIRED, rule_of
@@ -141,6 +141,25 @@ def decisions(journal: Journal | None, month: str | None = None) -> pd.DataFrame
     columns = ["seq", "month", "indicator", *_DECISION_KEYS, "at", "actor"]
     return pd.DataFrame(found, columns=columns)
 
+
+def open_decisions(journal: Journal | None, month: str) -> pd.DataFrame:
+    """Decisions up to that month that nobody has called done, the oldest first.
+
+    Columns  those of ``decisions``, and ``late``: its date lies before the month's end
+    """
+    every = decisions(journal)
+    done = {
+        entry.object.removeprefix(DECISION)
+        for entry in _standing(journal, "note")
+        if entry.object.startswith(DECISION) and entry.new == DONE
+    }
+    still = every[(every["month"] <= month) & ~every["seq"].astype(str).isin(done)]
+    until = f"{month_after(month)}-01"
+    late = (still["due"] != "") & (still["due"] < until)
+    return still.assign(late=late).sort_values("seq", ignore_index=True)
+
+
+DECISION, DONE = "decision:", {"done": True}  # how the journal says that one is done
 
 _DECISION_KEYS = ("text", "strength", "owner_role", "measure", "due")
 

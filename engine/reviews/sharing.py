@@ -118,7 +118,7 @@ def shared_month(
         forgone = forgone[forgone["treatments"] >= smallest]
     empty = {
         name: getattr(month, name).iloc[0:0]
-        for name in ("filters", "sensors", "decisions", "sign_offs")
+        for name in ("filters", "sensors", "decisions", "open_decisions", "sign_offs")
     }
     flags = month.confirmations.rules
     n = flags["flags"].to_numpy(float)

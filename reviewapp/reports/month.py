@@ -187,11 +187,22 @@ def _confirmations(month: Month) -> str:
 
 
 def _decisions(month: Month) -> str:
-    if month.decisions.empty:
-        return paragraph("None recorded.")
+    said = paragraph("None recorded for this month.")
+    if not month.decisions.empty:
+        said = _decided(month.decisions)
+    earlier = month.open_decisions[month.open_decisions["month"] < month.month]
+    if earlier.empty:
+        return said
+    late = int(earlier["late"].sum())
+    past = f", {late} of them past the date" if late else ""
+    head = f"Not yet done from earlier months{past}:"
+    return said + paragraph(head) + _decided(earlier)
+
+
+def _decided(decisions: pd.DataFrame) -> str:
     rows = [
         tuple(str(row[name]) for name in _DECIDED)
-        for row in month.decisions.to_dict("records")
+        for row in decisions.to_dict("records")
     ]
     heads = ("About", "What", "Strength", "Owner (role)", "Measure", "Due")
     return table(heads, rows)

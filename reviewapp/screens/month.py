@@ -9,6 +9,7 @@ from engine.reviews.chart_check import CHART, draw_sample
 from engine.reviews.figures import month_words
 from engine.reviews.indicators import INDICATORS
 from engine.reviews.month import Month
+from engine.reviews.month_journal import DECISION, DONE
 from engine.reviews.signatures import signed_lines
 from reviewapp import data, entry, parts, tables, theme
 from reviewapp.drawings.month_lines import lines_html, style
@@ -242,6 +243,7 @@ def _decisions(month: Month) -> None:
             hide_index=True,
             width="stretch",
         )
+    _still_open(month)
     with st.expander("Record a decision"), entry.form("decision"):
         about = st.selectbox(
             "About",
@@ -254,6 +256,28 @@ def _decisions(month: Month) -> None:
             on = f"month:{month.month}{place}"
             entry.keep_decision("decision", signed, on, decided)
     _freeze_baseline(month)
+
+
+def _still_open(month: Month) -> None:
+    """What was decided up to this month and nobody has called done."""
+    still = month.open_decisions
+    if still.empty:
+        return
+    late = int(still["late"].sum())
+    head = f"Not yet done: {len(still)}" + (f", {late} past the date" if late else "")
+    with st.expander(head):
+        names = ["month", "indicator", "text", "owner_role", "measure", "due"]
+        st.dataframe(tables.labelled(still[names]), hide_index=True, width="stretch")
+        with entry.form("done"):
+            words = dict(zip(still["seq"], still["text"], strict=True))
+            seq = st.selectbox("Done", list(words), format_func=lambda n: words[n])
+            seen = st.text_input("What its measure shows")
+            signed = entry.signature()
+            if st.form_submit_button("Call it done"):
+                on = f"{DECISION}{seq}"
+                entry.keep(
+                    "done", signed, action="note", object=on, new=DONE, reason=seen
+                )
 
 
 def _freeze_baseline(month: Month) -> None:

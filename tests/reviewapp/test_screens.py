@@ -269,3 +269,19 @@ def test_the_list_is_walked_and_an_id_is_found_whatever_was_chosen_before():
     at.text_input(key="find_treatment").set_value("nobody").run()
     assert not at.exception
     assert "has no treatment nobody" in words_of(at)
+
+
+def test_a_decision_is_called_done_and_leaves_the_open_ones():
+    at = opened("month", log="case-jet_at_the_y")
+    form = "decision_0"
+    labelled = {t.label: t for t in at.text_input if t.form_id == form}
+    labelled["What is decided"].set_value("Mesh at the humidifier inlet")
+    signer(at, form).set_value("QL")
+    next(b for b in at.selectbox if b.form_id == form and b.label == "Strength").select(
+        "intermediate"
+    )
+    submitted(at, form).run()
+    assert any(e.label == "Not yet done: 1" for e in at.expander)
+    submitted(at, "done_0").run()
+    assert not at.exception
+    assert not any(e.label.startswith("Not yet done") for e in at.expander)

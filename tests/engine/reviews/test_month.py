@@ -335,3 +335,28 @@ def test_the_rise_of_a_filter_is_its_theil_sen_slope_a_treatment(replayed):
     # Two treatments a day stood before each reading; the slope by scipy.
     given = [2 * (1 + 3 * i) for i in range(len(values))]
     assert line.value == pytest.approx(theilslopes(values, given).slope)
+
+
+def test_a_decision_stays_open_until_it_is_called_done(tmp_path):
+    from engine.journal import open_journal
+    from engine.reviews.month_journal import DECISION, DONE, open_decisions
+
+    book = open_journal(tmp_path / "journal.jsonl")
+    signed = {"at": datetime(2026, 4, 2), "actor": "QL", "role": "quality lead"}
+
+    def decide(month, text, due):
+        new = {"text": text, "strength": "stronger", "due": due}
+        about = f"month:{month}"
+        book.append(**signed, action="decision", object=about, new=new, reason="")
+
+    decide("2026-01", "filters in every bag", "2026-02-15")
+    decide("2026-02", "mesh at the inlet", "")
+    decide("2026-05", "later", "2026-04-01")
+    found = open_decisions(book, "2026-02")
+    assert found["text"].tolist() == ["filters in every bag", "mesh at the inlet"]
+    assert found["late"].tolist() == [True, False]
+    assert not open_decisions(book, "2026-01")["late"].any()
+    done = f"{DECISION}{found['seq'][0]}"
+    book.append(**signed, action="note", object=done, new=DONE, reason="share 97 %")
+    assert open_decisions(book, "2026-02")["text"].tolist() == ["mesh at the inlet"]
+    assert open_decisions(None, "2026-02").empty
