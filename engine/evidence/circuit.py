@@ -138,6 +138,14 @@ DEFAULT_RATE_BPM = Number(
     where="breaths taken where no rate is logged",
     known="ours",
 )
+FASTEST_TIDAL_RATE_BPM = Number(
+    value=60.0,
+    unit="bpm",
+    source=OURS,
+    where="no estimate above this rate",
+    known="ours",
+    note="oscillation is charted in Hz or far above it; no bench work here covers it",
+)
 DEFAULT_DUTY_FRAC = Number(
     value=0.3,
     unit="frac",

@@ -15,7 +15,7 @@ from engine.evidence import calibration, circuit, filter_capture, lung
 from engine.physics.estimate import Estimate
 from engine.physics.filter import penetration_frac
 from engine.physics.setup import FILTER, Setup, assumption_spread_logit
-from engine.physics.sizes import LPM_PER_ML_PER_S, expiratory_ml_per_s
+from engine.physics.sizes import LPM_PER_ML_PER_S, filter_ml_per_s
 
 Band = tuple[np.ndarray, np.ndarray]
 
@@ -78,7 +78,7 @@ def _lung_band(part: np.ndarray, delivered: np.ndarray, band: Band) -> Band:
 
 
 def _filter_side(setup: Setup, load: np.ndarray, band: Band) -> dict[str, Band]:
-    flow_lpm = expiratory_ml_per_s(setup) * LPM_PER_ML_PER_S
+    flow_lpm = filter_ml_per_s(setup) * LPM_PER_ML_PER_S
     _, low, high = penetration_frac(setup.filter_kind, flow_lpm)
     low = np.where(setup.filter_present | setup.lacks(FILTER), low, 1.0)
     high = np.where(setup.filter_present, high, 1.0)

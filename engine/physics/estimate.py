@@ -22,6 +22,7 @@ from engine.physics.sizes import (
     Sized,
     column,
     expiratory_ml_per_s,
+    filter_ml_per_s,
     inspiratory_ml_per_s,
     sized_of,
     tube_passed,
@@ -100,7 +101,7 @@ def estimate(
     delivered = reaches_tube * sized.tube_in
     tracheobronchial = delivered * airways.tracheobronchial
     alveolar = delivered * airways.alveolar
-    comes_back = delivered - tracheobronchial - alveolar
+    comes_back = np.maximum(delivered - tracheobronchial - alveolar, 0.0)
     leaves_tube = comes_back * airways.tube_out
     exhaled = leaves_tube * (1 - back)
     goes_on = swept * (1 - swept_in_hme)
@@ -119,10 +120,8 @@ def estimate(
         "sensor_side": sensor,
         "room": room,
     }
-    # What did not reach the Y is what is left: size by size it is the settled share.
-    places["limb"] = np.maximum(1 - sum(places.values()), 0.0)
     return Estimate(
-        places={name: places[name] for name in FRACTIONS},
+        places=with_rest_in_limb(places),
         delivered=_sum(delivered),
         swept=_sum(swept),
         exhaled=_sum(exhaled),
@@ -226,12 +225,31 @@ def _expiratory_limb_frac(setup: Setup, sized: Sized) -> np.ndarray:
     return np.exp(-sized.loss_per_s * column(time_s))
 
 
+def with_rest_in_limb(places: dict[str, np.ndarray]) -> dict[str, np.ndarray]:
+    """All places, adding to 1: what did not reach the Y is what is left for the limb.
+
+    Where the others come to more than 1, by the last bits of single precision or by a
+    factor put on them, all that left the generator is drawn in alike.
+    """
+    residual = places["generator_residual"]
+    left = sum(v for name, v in places.items() if name != "generator_residual")
+    most = 1 - residual
+    with np.errstate(divide="ignore", invalid="ignore"):
+        drawn_in = np.where(left > most, most / left, 1.0)
+    told = {
+        name: frac if name == "generator_residual" else frac * drawn_in
+        for name, frac in places.items()
+    }
+    told["limb"] = np.maximum(most - left * drawn_in, 0.0)
+    return {name: told[name] for name in FRACTIONS}
+
+
 def _filter_side(
     setup: Setup, load: np.ndarray
 ) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     """What the filter holds, what sensors and valve keep, what reaches the room."""
     through, _, _ = penetration_frac(
-        setup.filter_kind, expiratory_ml_per_s(setup) * LPM_PER_ML_PER_S
+        setup.filter_kind, filter_ml_per_s(setup) * LPM_PER_ML_PER_S
     )
     passed = load * np.where(setup.filter_present, through, 1.0)
     sensor = passed * np.where(

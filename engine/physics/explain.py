@@ -31,7 +31,7 @@ from engine.physics.estimate import lung_index, takes_humid_factor
 from engine.physics.filter import hme_capture_frac, penetration_frac
 from engine.physics.published import published_table
 from engine.physics.setup import Setup, setup_of
-from engine.physics.sizes import LPM_PER_ML_PER_S, expiratory_ml_per_s
+from engine.physics.sizes import LPM_PER_ML_PER_S, filter_ml_per_s
 from engine.physics.split import limb_cm, passes_chamber, way_to_wye
 
 Input = tuple[str, str, bool]  # label, value with its unit, whether it was assumed
@@ -282,7 +282,7 @@ def _expiratory_limb(t: _Treatment) -> Stage:
 
 def _filter(t: _Treatment) -> Stage:
     setup = t.setup
-    flow_lpm = expiratory_ml_per_s(setup) * LPM_PER_ML_PER_S
+    flow_lpm = filter_ml_per_s(setup) * LPM_PER_ML_PER_S
     through = penetration_frac(setup.filter_kind, flow_lpm)[0][0]
     passed = float(through) if setup.filter_present[0] else 1.0
     return _stage(

@@ -27,10 +27,13 @@ REFUSALS: tuple[str, ...] = (
     "the kind of circuit is not logged",
     "the tidal volume is not logged",
     "a logged value is not possible",
-    "the inspiratory time leaves no time to breathe out at the logged rate",
+    "the inspiratory time leaves no time to breathe out at the rate",
     "the breath is too small: infants are outside the bench work this rests on",
     "the tidal volume does not exceed the dead space of tube and connectors",
     "the site does not exist on a single-limb circuit",
+    "the inspiratory pause fills the inspiratory time",
+    "the breath would need more flow than a ventilator gives",
+    "the rate is beyond tidal breathing: oscillation is outside the bench work",
 )
 
 # (plain words, what it may move on the logit scale; None where it is tried out)
@@ -250,6 +253,7 @@ def _droplets(rows: Batch, gaps: _Gaps) -> tuple[np.ndarray, np.ndarray]:
     usual_um = by_generator(rows["generator"], {k: v[0] for k, v in _SIZES.items()})
     usual_gsd = by_generator(rows["generator"], {k: v[1] for k, v in _SIZES.items()})
     mmad_um = gaps.filled(rows["mmad_um"], usual_um, SIZE)
+    gaps.note(SIZE, np.isnan(rows["gsd"]))
     return mmad_um, np.where(np.isnan(rows["gsd"]), usual_gsd, rows["gsd"])
 
 
@@ -428,6 +432,11 @@ _READ = (
 )
 
 
+_FASTEST_ML_PER_S = (COLUMNS["peak_inspiratory_flow_lpm"].high or 0) * (
+    ML_PER_L / S_PER_MIN
+)
+
+
 def _is_impossible(rows: Batch) -> np.ndarray:
     """True where a number the physics reads lies outside what its column can hold."""
     outside = np.zeros(size(rows), bool)
@@ -451,6 +460,9 @@ def _refusal(rows: Batch, setup: Setup) -> np.ndarray:
         setup.tidal_ml < float(circuit.SMALLEST_BREATH_ML),
         setup.tidal_ml <= setup.dead_ml,
         setup.is_single_limb & (setup.site == code_of("site", "expiratory_limb")),
+        np.nan_to_num(rows["inspiratory_pause_s"], nan=0.0) >= setup.inspiratory_s,
+        setup.tidal_ml > _FASTEST_ML_PER_S * setup.moving_s,
+        rows["respiratory_rate_bpm"] > float(circuit.FASTEST_TIDAL_RATE_BPM),
     )
     refusal = np.zeros(len(setup), np.int8)
     for code in range(len(reasons), 0, -1):

@@ -63,6 +63,12 @@ def expiratory_ml_per_s(setup: Setup) -> np.ndarray:
     return setup.tidal_ml / setup.expiratory_s
 
 
+def filter_ml_per_s(setup: Setup) -> np.ndarray:
+    """Mean flow through the expiratory filter: bias and driving gas pass it as well."""
+    added = np.nan_to_num(setup.bias_ml_per_s) + np.nan_to_num(setup.gas_ml_per_s)
+    return expiratory_ml_per_s(setup) + added
+
+
 def tube_passed(
     setup: Setup, relaxation_s: np.ndarray, flow_ml_per_s: np.ndarray
 ) -> np.ndarray:

@@ -8,7 +8,7 @@ import numpy as np
 
 from engine.evidence import circuit
 from engine.physics.constants import Constants
-from engine.physics.estimate import Estimate, minds_humid_gas
+from engine.physics.estimate import Estimate, minds_humid_gas, with_rest_in_limb
 from engine.physics.setup import (
     BIAS,
     DRYING,
@@ -66,15 +66,14 @@ def humidity_ratio(setup: Setup, constants: Constants) -> np.ndarray:
 
 def with_other_humidity(found: Estimate, ratio: np.ndarray) -> Estimate:
     """The estimate in the other state of the gas: all past the limb scaled alike."""
-    kept = ("generator_residual", "limb")
+    kept = ("generator_residual",)
     places = {
         name: frac if name in kept else frac * ratio
         for name, frac in found.places.items()
+        if name != "limb"
     }
-    others = sum(frac for name, frac in places.items() if name != "limb")
-    places["limb"] = np.maximum(1 - others, 0.0)
     return Estimate(
-        places=places,
+        places=with_rest_in_limb(places),
         delivered=found.delivered * ratio,
         swept=found.swept * ratio,
         exhaled=found.exhaled * ratio,

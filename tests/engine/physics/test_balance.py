@@ -154,7 +154,7 @@ REFUSED = [
     ({"mmad_um": 0.0}, "a logged value is not possible"),
     (
         {"inspiratory_time_s": 4.0},
-        "the inspiratory time leaves no time to breathe out at the logged rate",
+        "the inspiratory time leaves no time to breathe out at the rate",
     ),
     (
         {"tidal_volume_ml": 40.0},
@@ -171,6 +171,18 @@ REFUSED = [
     (
         {"circuit": "single_limb", "site": "expiratory_limb"},
         "the site does not exist on a single-limb circuit",
+    ),
+    (
+        {"inspiratory_time_s": 1.0, "inspiratory_pause_s": 1.0},
+        "the inspiratory pause fills the inspiratory time",
+    ),
+    (
+        {"tidal_volume_ml": 3000.0, "inspiratory_time_s": 0.2},
+        "the breath would need more flow than a ventilator gives",
+    ),
+    (
+        {"respiratory_rate_bpm": 150.0, "inspiratory_time_s": 0.13},
+        "the rate is beyond tidal breathing: oscillation is outside the bench work",
     ),
 ]
 
@@ -410,3 +422,36 @@ def test_long_batches_are_worked_in_pieces_that_change_nothing(changed):
     np.testing.assert_allclose(
         found["delivered_frac"][-100:], tail["delivered_frac"], atol=1e-9
     )
+
+
+@pytest.mark.parametrize("mmad_um", [0.2, 0.9, 3.3, 7.0, 12.0, 20.0])
+@pytest.mark.parametrize("site", ["expiratory_limb", "ventilator_outlet", "wye"])
+def test_fractions_add_to_one_to_the_last_digit_at_every_size(changed, site, mmad_um):
+    found = balance(changed(site=site, mmad_um=mmad_um, gsd=1.4))
+    shares = np.array([found[f"{name}_frac"][0] for name in FRACTIONS])
+    assert abs(shares.sum() - 1) < 1e-9
+    assert (shares >= 0).all()
+
+
+def test_a_spread_of_droplets_taken_as_usual_is_said(changed):
+    logged = balance(changed(mmad_um=4.0, gsd=2.0))["assumed"][0]
+    taken = balance(changed(mmad_um=4.0, gsd=None))["assumed"][0]
+    assert "droplet size not logged: usual for the generator" in [
+        words for bit, words in enumerate(ASSUMPTIONS) if taken >> bit & 1
+    ]
+    assert taken != logged
+
+
+def test_bias_flow_passes_the_filter_as_well(changed):
+    rows = {"tidal_volume_ml": 700.0, "bias_flow_lpm": 20.0}
+    fast = balance(changed(expiratory_filter="present", **rows))
+    open_ = balance(changed(expiratory_filter="absent", **rows))
+    reached = open_["room_frac"][0] + open_["sensor_side_frac"][0]
+    passed = fast["room_frac"][0] + fast["sensor_side_frac"][0]
+    slow = balance(changed(expiratory_filter="present", bias_flow_lpm=0.0))
+    slow_open = balance(changed(expiratory_filter="absent", bias_flow_lpm=0.0))
+    share = passed / reached
+    at_rest = (slow["room_frac"][0] + slow["sensor_side_frac"][0]) / (
+        slow_open["room_frac"][0] + slow_open["sensor_side_frac"][0]
+    )
+    assert share > at_rest
