@@ -16,6 +16,7 @@ from engine.physics.setup import (
     HME,
     HUMIDITY,
     LEAK,
+    TIMING,
     Setup,
     tried,
 )
@@ -25,7 +26,8 @@ from engine.units import ML_PER_L, S_PER_MIN
 def other_setups(setup: Setup) -> Iterator[tuple[np.ndarray, Setup, bool]]:
     """Other ways the treatment may have been set up.
 
-    Bias or leak flow at the other values tried; the HME out where it may have been in.
+    Bias or leak flow at the other values tried; output with inspiration where it may
+    have been continuous, or the reverse; the HME out where it may have been in.
     Yields   which rows, some more than once, how they are set up then, and whether
              tube and lung stay as they are.
     """
@@ -39,6 +41,10 @@ def other_setups(setup: Setup) -> Iterator[tuple[np.ndarray, Setup, bool]]:
     rows = np.concatenate(lacks)
     if len(rows):
         yield rows, setup.pick(rows).but(bias_ml_per_s=np.concatenate(flows)), True
+    index = np.flatnonzero(setup.lacks(TIMING))
+    if len(index):
+        one = setup.pick(index)
+        yield index, one.but(is_synchronised=~one.is_synchronised), True
     index = np.flatnonzero(setup.lacks(HME))
     if len(index):
         yield index, without_hme(setup.pick(index)), False

@@ -455,3 +455,17 @@ def test_bias_flow_passes_the_filter_as_well(changed):
         slow_open["room_frac"][0] + slow_open["sensor_side_frac"][0]
     )
     assert share > at_rest
+
+
+@pytest.mark.parametrize("bias_flow_lpm", [0.0, 2.0, 5.0])
+@pytest.mark.parametrize("generator", ["vibrating_mesh", "jet", "ultrasonic"])
+def test_a_timing_nobody_logged_is_inside_the_band_either_way(
+    changed, generator, bias_flow_lpm
+):
+    setup = {"generator": generator, "site": "wye", "bias_flow_lpm": bias_flow_lpm}
+    unsaid = balance(changed(synchrony=None, **setup))
+    for synchrony in ("continuous", "inspiration_synchronised"):
+        said = balance(changed(synchrony=synchrony, **setup))
+        for name in ("delivered", "unused_past_wye"):
+            low, high = (unsaid[f"{name}_{end}_frac"][0] for end in ("low", "high"))
+            assert low <= said[f"{name}_frac"][0] <= high
