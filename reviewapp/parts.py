@@ -104,7 +104,8 @@ def downloads(
         "Copy for sharing: no dates, devices, patients or small groups",
         key=f"share_{name}",
     ):
-        _files(f"{name.split('-')[0]}-shared", make_shared, shared=True)
+        undated = re.sub(r"-\d{4}-\d{2}", "", name)
+        _files(f"{undated}-shared", make_shared, shared=True)
         return
     _files(name, make)
     if make_shared is None:

@@ -20,7 +20,7 @@ from typing import IO, Any
 
 import pandas as pd
 
-from engine.errors import JournalBroken, UnknownId
+from engine.errors import EntryRefused, JournalBroken, UnknownId
 from engine.journal.entry import (
     GENESIS,
     LONGEST_ENTRY_BYTES,
@@ -225,7 +225,7 @@ def _entry(line: bytes, where: str) -> Entry:
         entry = Entry(**content)
         same = line_of(entry) == line
         fits = is_sound(entry)
-    except (ValueError, TypeError, RecursionError, OverflowError):
+    except (ValueError, TypeError, RecursionError, OverflowError, EntryRefused):
         raise JournalBroken(f"{where} is not a journal entry") from None
     if not fits:
         raise JournalBroken(f"{where} is not a journal entry")

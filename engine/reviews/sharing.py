@@ -13,6 +13,7 @@ import re
 from calendar import month_name
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
+from html import escape, unescape
 
 import numpy as np
 import pandas as pd
@@ -66,11 +67,15 @@ class Neutral:
 
     def still_named(self, told: str) -> list[str]:
         """Names and dates that are left; an empty list is what a copy needs."""
+        told = unescape(told)
         words = {word.strip("./-") for word in re.findall(r"[\w./-]+", told)}
         found = words & self.forbidden
+        # A name of several words, or with signs in it, is no single word of a text.
+        found |= {n for n in self.forbidden if _SIGNS.search(n) and n in told}
         return sorted(found | set(_DATES.findall(told)))
 
 
+_SIGNS = re.compile(r"[^\w./-]")
 _NAMES = "|".join(month_name[1:])
 _DATES = re.compile(
     rf"\b(?:(?:\d{{1,2}} )?(?:{_NAMES}) \d{{4}}|\d{{4}}-\d{{2}}(?:-\d{{2}})?)\b"
@@ -95,7 +100,8 @@ def neutral_of(replay: Replay) -> Neutral:
         words |= {f"{name[:3]} {year[-2:]}": str(number)}
         words |= {f"since {name}": f"since month {number}"}
         words |= {f">{name[:3]}<": f">{number}<"}
-    words |= {unit: f"unit {number}" for number, unit in enumerate(units, 1)}
+    for number, unit in enumerate(units, 1):
+        words |= {unit: f"unit {number}", escape(unit): f"unit {number}"}
     listed = sorted(words.items(), key=lambda item: -len(item[0]))
     return Neutral(tuple(listed), frozenset(_forbidden(replay)) | set(units))
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import unicodedata
+from dataclasses import replace
 from importlib import resources
 from typing import Any
 
@@ -44,8 +45,9 @@ def pdf(title: str, banner: Banner, sections: Sections) -> bytes:
     except typst.TypstError:
         # A letter no font here has: a PDF for screen readers may not hold it.
         plain = [(_in_fonts(head), _in_fonts(body)) for head, body in sections]
+        named = replace(banner, log_name=_in_fonts(banner.log_name))
     try:
-        return _compiled(_in_fonts(title), banner, plain)
+        return _compiled(_in_fonts(title), named, plain)
     except typst.TypstError as problem:
         raise SourceUnreadable(
             f"the PDF cannot be set: {problem}; write .html and print that page"
@@ -64,13 +66,14 @@ _OURS = "–—‘’“”…·•µμ×−≥≤≈±°□■●◐○▸→σ
 def _compiled(title: str, banner: Banner, sections: Sections) -> bytes:
     import typst
 
+    title = printable(title)
     page = {
-        "title": printable(title),
+        "title": title,
         "confidential": CONFIDENTIAL,
         "caution": CAUTION,
         "footer": f"{title}. Findings need clinical confirmation. Engine "
         f"{banner.engine_version}, made {banner.made_at} UTC.",
-        "stamp": list(banner.lines),
+        "stamp": [printable(line) for line in banner.lines],
         "narrow": _NARROW,
         "sections": [
             {

@@ -253,10 +253,6 @@ def _figure(value: float | None, times: float = 1.0) -> str:
     return "" if value is None or pd.isna(value) else significant(value * times)
 
 
-def _count(value: float | None) -> str:
-    return "" if value is None or pd.isna(value) else f"{value:.0f}"
-
-
 def _percent(value: float | None) -> str:
     return "" if value is None or pd.isna(value) else percent(value)
 

@@ -224,3 +224,11 @@ def test_letters_no_paper_holds_do_not_stop_a_report(letter):
     assert "end" in text
     html = file_of(report, BANNER, ".html").decode("utf-8")
     assert not re.search(r"[\x00-\x08\x0b-\x1f\x7f-\x9f]", html)
+
+
+def test_a_log_named_in_any_script_still_makes_a_pdf():
+    from dataclasses import replace
+
+    report = Report(name="n", title="T\x07", sections=[("S", "<p>x</p>")], tables={})
+    named = replace(BANNER, log_name="नमस्ते\x1b.duckdb")
+    assert file_of(report, named, ".pdf").startswith(b"%PDF")

@@ -150,3 +150,26 @@ def test_months_and_units_are_numbered_and_other_words_stay(done):
         "A03",
     ]
     assert neutral.still_named(pd.DataFrame({"a": [1.5]}).to_csv()) == []
+
+
+def test_names_with_signs_and_blanks_are_found_as_well(tmp_path):
+    from html import escape
+
+    from engine.log import write_log
+
+    path = tmp_path / "log.duckdb"
+    row = {
+        "treatment_id": "T-1 a",
+        "started_at": pd.Timestamp("2026-07-01 08:00"),
+        "unit_token": "A&E <north>",
+        "ventilator_token": "Vent 12",
+    }
+    write_log(path, {"treatment": pd.DataFrame([row])}, "Etc/UTC", AT)
+    with open_log(path) as log:
+        made = replay(log, load_policy("common_practice"))
+        neutral = neutral_of(made)
+        made.close()
+    told = f"<p>{escape('In A&E <north> on Vent 12')}</p>"
+    assert "unit 1" in neutral.text(told)
+    assert neutral.still_named(neutral.text(told)) == ["Vent 12"]
+    assert neutral.still_named(told) == ["A&E <north>", "Vent 12"]
